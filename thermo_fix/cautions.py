@@ -1,0 +1,114 @@
+"""Everything that the product warns of, in one place.
+
+General cautions are printed in every report; the functions give those that belong to one image
+or one finding, with the numbers that set them off.
+"""
+
+ENERGISED = (
+    "Energised equipment is opened and worked near only by qualified people under the site's "
+    "electrical safety programme and local code. This report is not permission to do so."
+)
+SCREENING = (
+    "Grades are screening aids. The criteria's own text, the manufacturer's limits and the "
+    "responsible engineer decide."
+)
+INDICATION = (
+    "Building findings are indications, to be confirmed by other means before anything is opened."
+)
+EMISSIVITY = "Below an emissivity of 0.6 the temperature is not reliable without a reference patch."
+
+
+def general(purpose: str) -> tuple[str, ...]:
+    """Return the cautions that every report prints, for ``building`` or ``electrical``."""
+    own = (ENERGISED,) if purpose == "electrical" else (INDICATION,)
+    return (*own, SCREENING, EMISSIVITY)
+
+
+def low_emissivity(where: str, value: float) -> str:
+    """Emissivity below 0.6."""
+    return (
+        f"Emissivity of {where} is {value:.2f}, below 0.6: its temperature is not reliable "
+        "without a reference patch."
+    )
+
+
+def bounded(where: str, value: float, u: float) -> str:
+    """Emissivity whose interval crosses 0 or 1."""
+    return (
+        f"Emissivity of {where}, {value:.3f} with a standard uncertainty of {u:.3f}, reaches "
+        "beyond 0 or 1: a distribution cut off at the bound was used."
+    )
+
+
+def steep_view(where: str, angle_deg: float) -> str:
+    """View angle above 60 degrees."""
+    return (
+        f"View angle of {where} is {angle_deg:.0f} degrees, above 60: emissivity falls steeply "
+        "there and the reflection grows."
+    )
+
+
+def stretched_air(distance_m: float) -> str:
+    """Air path longer than the formula was checked for."""
+    return f"The air path of {distance_m:.0f} m stretches the air model, which is checked to 200 m."
+
+
+def unsolved(pixels: int) -> str:
+    """Pixels without a solution."""
+    return (
+        f"{pixels} pixels have no surface temperature under these inputs and are left blank: "
+        "check the emissivity and the reflected temperature."
+    )
+
+
+def cut_by_frame() -> str:
+    """Region at the edge of the image."""
+    return "The region is cut by the edge of the image: its true extreme and area may be greater."
+
+
+def too_small(width: int, height: int) -> str:
+    """Region narrower than three footprints."""
+    return (
+        f"The region is {width} x {height} pixels, less than 3 x 3 footprints across: too small "
+        "to measure, its extreme is understated."
+    )
+
+
+def near_reflected(separation_k: float) -> str:
+    """Surface close to the reflected temperature, first order not enough."""
+    return (
+        f"The surface lies within {abs(separation_k):.1f} K of the reflected temperature; the "
+        "emissivity hardly matters there, and neither does the reading tell it."
+    )
+
+
+def not_linear() -> str:
+    """First-order propagation was not good enough."""
+    return (
+        "The temperature does not follow its inputs linearly within their uncertainty: the "
+        "uncertainty was obtained by Monte Carlo (JCGM 101)."
+    )
+
+
+def lost_draws(share: float) -> str:
+    """Part of the draws has no solution."""
+    return (
+        f"{share:.0%} of the possible inputs explain the reading by no temperature at all: the "
+        "emissivity or the reflected temperature is not known well enough."
+    )
+
+
+def inside_noise(delta_k: float, u_delta_k: float) -> str:
+    """Difference smaller than its expanded uncertainty."""
+    return (
+        f"The difference of {abs(delta_k):.1f} K is not larger than its expanded uncertainty of "
+        f"{2.0 * u_delta_k:.1f} K (k = 2): it may not be real."
+    )
+
+
+def low_load(share: float) -> str:
+    """Load below 40 percent."""
+    return (
+        f"Load was {share:.0%} of the rating, below 40 %: the grade may be understated, because "
+        "the difference grows with the load."
+    )

@@ -1,0 +1,335 @@
+"""The command line: options, progress, exit status. It holds no physics.
+
+Exit status: 0 all done; 1 some images failed; 2 the survey could not be run.
+"""
+
+import os
+import shutil
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated, NoReturn
+
+import typer
+
+from thermo_fix.errors import ThermoFixError
+from thermo_fix.version import __version__
+
+if TYPE_CHECKING:
+    from thermo_fix.sheet import FileFacts
+
+# Imaging and plotting libraries are imported inside the commands that need them, so that --help
+# and point answer at once.
+
+EXIT_DONE = 0
+EXIT_SOME_FAILED = 1
+EXIT_NOT_RUN = 2
+
+app = typer.Typer(
+    name="thermo-fix",
+    help=(
+        "From a folder of radiometric infrared images to a report of corrected, graded findings "
+        "with their uncertainty.\n\n"
+        "A first survey:  thermo-fix draft FOLDER  writes FOLDER/survey.toml; fill it in;  "
+        "thermo-fix vet FOLDER  checks it;  thermo-fix run FOLDER  writes FOLDER/results with "
+        "report.html.  thermo-fix demo  shows all of it on an invented survey."
+    ),
+    no_args_is_help=True,
+    add_completion=False,
+    rich_markup_mode=None,
+    pretty_exceptions_enable=False,
+    context_settings={"help_option_names": ["-h", "--help"]},
+)
+
+Folder = Annotated[
+    Path, typer.Argument(help="The survey folder: images, and survey.toml if there is one.")
+]
+
+
+@app.callback(invoke_without_command=True)
+def _root(
+    version: Annotated[bool, typer.Option("--version", help="Print the version.")] = False,
+) -> None:
+    if version:
+        print(f"thermo_fix {__version__}")
+        raise typer.Exit
+
+
+@app.command()
+def run(
+    folder: Folder,
+    out: Annotated[
+        Path | None,
+        typer.Option(help="Results folder; FOLDER/results if not given. Replaced as a whole."),
+    ] = None,
+    quiet: Annotated[bool, typer.Option("--quiet", "-q", help="Print problems only.")] = False,
+) -> None:
+    """Do the whole job: correct, find, grade, and write the report.
+
+    Exit status: 0 all done; 1 some images failed (named on standard error); 2 the survey could
+    not be run and nothing was written.
+    """
+    raise typer.Exit(_run(folder, out, quiet))
+
+
+@app.command()
+def draft(
+    folder: Folder,
+    force: Annotated[
+        bool, typer.Option("--force", help="Overwrite a survey.toml that is already there.")
+    ] = False,
+) -> None:
+    """Write a survey sheet for a folder, filled with what can be read from its images."""
+    from thermo_fix.sheet import SHEET_NAME, draft_sheet
+
+    if not folder.is_dir():
+        _fail(f"{folder}: is no folder; give the folder that holds the images")
+    sheet = folder / SHEET_NAME
+    if sheet.exists() and not force:
+        _fail(f"{sheet}: is already there; move it away, or use --force to overwrite it")
+    facts = _facts(folder)
+    if not facts:
+        _fail(f"{folder}: holds no TIFF image (*.tif, *.tiff); nothing to draft a sheet for")
+    text = draft_sheet(folder, facts)
+    try:
+        partial = sheet.with_name(f".{SHEET_NAME}.partial")
+        partial.write_text(text, encoding="utf-8", newline="\n")
+        partial.replace(sheet)
+    except OSError as error:
+        _fail(f"{sheet}: cannot be written ({(error.strerror or 'error').lower()})")
+    print(f"{sheet}: drafted for {len(facts)} images. Fill in what is marked, then:")
+    print(f"  thermo-fix vet {_quoted(folder)}")
+
+
+@app.command()
+def vet(folder: Folder) -> None:
+    """Check a survey sheet and its images; compute and write nothing.
+
+    Exit status: 0 nothing wrong; 1 some images cannot be used; 2 the sheet is wrong.
+    """
+    from thermo_fix.errors import ImageError
+    from thermo_fix.read import read_frame
+    from thermo_fix.sheet import check_polygon
+    from thermo_fix.survey import open_survey
+
+    survey = open_survey(folder)
+    for note in survey.notes:
+        print(f"note: {note}")
+    bad = 0
+    for job in survey.images:
+        try:
+            frame = read_frame(job.path, survey.camera)
+            rows, columns = frame.shape
+            messages = [check_polygon(zone, columns, rows) for zone in job.zones]
+        except ImageError as error:
+            bad += 1
+            _problem(str(error))
+            continue
+        for message in [*frame.notes, frame.encoding.note, *messages]:
+            if message:
+                print(f"note: {job.file}: {message}" if job.file not in message else message)
+    good = len(survey.images) - bad
+    print(f"{folder}: sheet in order; {good} of {len(survey.images)} images can be used.")
+    raise typer.Exit(EXIT_SOME_FAILED if bad else EXIT_DONE)
+
+
+@app.command()
+def point(
+    reading_c: Annotated[float, typer.Argument(help="Reading of the camera, degC.")],
+    emissivity: Annotated[
+        str, typer.Option(help="A number above 0 and at most 1, or a surface such as 'plaster'.")
+    ],
+    reflected_c: Annotated[
+        float | None, typer.Option(help="Reflected apparent temperature, degC; else the air's.")
+    ] = None,
+    air_c: Annotated[float, typer.Option(help="Air temperature, degC.")] = 20.0,
+    humidity: Annotated[float, typer.Option(help="Relative humidity, 0 to 1.")] = 0.5,
+    distance_m: Annotated[
+        float | None, typer.Option(help="Distance, m; without it no air is corrected for.")
+    ] = None,
+    transmittance: Annotated[
+        float | None, typer.Option(help="Air transmittance, instead of the formula.")
+    ] = None,
+    window_transmittance: Annotated[
+        float | None, typer.Option(help="Transmittance of an infrared window in the path.")
+    ] = None,
+    model: Annotated[str, typer.Option(help="Radiation model: total or band.")] = "total",
+    band_um: Annotated[
+        tuple[float, float], typer.Option(help="Band of the camera, um, for the band model.")
+    ] = (8.0, 14.0),
+    recorded_emissivity: Annotated[
+        float, typer.Option(help="Emissivity that the camera had applied.")
+    ] = 1.0,
+    recorded_reflected_c: Annotated[
+        float, typer.Option(help="Reflected temperature that the camera had applied, degC.")
+    ] = 20.0,
+) -> None:
+    """Correct one reading from numbers and print the surface temperature."""
+    from thermo_fix.point import correct
+    from thermo_fix.surfaces import UnknownSurface
+
+    if model not in ("total", "band"):
+        _fail(f'--model {model}: write "total" or "band"')
+    value: float | str
+    try:
+        value = float(emissivity)
+    except ValueError:
+        value = emissivity
+    try:
+        result = correct(
+            reading_c,
+            emissivity=value,
+            reflected_c=reflected_c,
+            air_c=air_c,
+            humidity=humidity,
+            distance_m=distance_m,
+            transmittance=transmittance,
+            window_transmittance=window_transmittance,
+            model="band" if model == "band" else "total",
+            band_um=band_um,
+            recorded_emissivity=recorded_emissivity,
+            recorded_reflected_c=recorded_reflected_c,
+        )
+    except UnknownSurface as error:
+        _fail(f"--emissivity {emissivity!r}: {error.args[0]}")
+    temperature, u = float(result.temperature_c), float(result.u_k)
+    if temperature != temperature:  # NaN
+        _fail(
+            "no surface temperature explains this reading: with these inputs the surroundings "
+            "alone would send more than was seen; check emissivity and reflected temperature"
+        )
+    print(f"surface temperature {temperature:.2f} degC, standard uncertainty {u:.2f} K (k = 1)")
+    print(f"95 % interval {temperature - 1.96 * u:.1f} to {temperature + 1.96 * u:.1f} degC")
+
+
+@app.command()
+def demo(
+    folder: Annotated[Path, typer.Argument(help="Where to put the demo surveys.")] = Path(
+        "thermo_fix_demo"
+    ),
+) -> None:
+    """Copy two invented demo surveys, building and electrical, and run both."""
+    from thermo_fix.demo import demo_surveys
+
+    status = EXIT_DONE
+    if folder.exists() and (not folder.is_dir() or any(folder.iterdir())):
+        _fail(f"{folder}: is already there; give a new or empty folder for the demo")
+    for name, source in demo_surveys().items():
+        target = folder / name
+        shutil.copytree(source, target)
+        # The demo has a broken file on purpose, so that a failed image can be seen.
+        outcome = _run(target, None, quiet=False)
+        status = max(status, EXIT_DONE if outcome == EXIT_SOME_FAILED else outcome)
+    raise typer.Exit(status)
+
+
+def main() -> NoReturn:
+    """Run the command line and leave with its exit status."""
+    try:
+        code = app(standalone_mode=False)
+        sys.exit(code if isinstance(code, int) else EXIT_DONE)
+    except ThermoFixError as error:
+        for line in str(error).splitlines():
+            _problem(line)
+        sys.exit(EXIT_NOT_RUN)
+    except typer.Exit as leave:
+        sys.exit(leave.exit_code)
+    except typer.Abort:
+        _problem("stopped")
+        sys.exit(EXIT_NOT_RUN)
+    except KeyboardInterrupt:
+        _problem("stopped; nothing was written")
+        sys.exit(EXIT_NOT_RUN)
+    except BrokenPipeError:
+        # The reader of our output has gone, as after "| head": nothing to say to anybody.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        sys.exit(EXIT_DONE)
+    except Exception as error:
+        # Usage errors of the command line know how to show themselves.
+        show = getattr(error, "show", None)
+        if show is None:
+            raise
+        show()
+        sys.exit(EXIT_NOT_RUN)
+
+
+def _run(folder: Path, out: Path | None, quiet: bool) -> int:
+    from thermo_fix.survey import RESULTS_NAME, run_survey
+
+    target = folder / RESULTS_NAME if out is None else out
+    if quiet or not sys.stderr.isatty():
+        result = run_survey(folder, out)
+    else:
+        from rich.console import Console
+        from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn
+        from rich.progress import TimeRemainingColumn as Remaining
+
+        columns = (TextColumn("{task.description}"), BarColumn(), MofNCompleteColumn(), Remaining())
+        with Progress(*columns, console=Console(stderr=True), transient=True) as bar:
+            task = bar.add_task(folder.name, total=None)
+            result = run_survey(
+                folder,
+                out,
+                progress=lambda done, total, _: bar.update(task, completed=done, total=total),
+            )
+    for image in result.failed:
+        _problem(image.error or f"{image.file}: failed")
+    if not quiet:
+        from thermo_fix.records import GRADES
+
+        for note in result.survey.notes:
+            print(f"note: {note}")
+        grades = [finding.grade for finding in result.findings]
+        counts = ", ".join(f"{grades.count(grade)} {grade}" for grade in reversed(GRADES))
+        done = len(result.images) - len(result.failed)
+        print(f"{folder}: {done} of {len(result.images)} images done, {len(grades)} findings")
+        print(f"  by grade: {counts}, {grades.count(None)} not graded")
+        print(f"  report: {target / 'report.html'}")
+    return EXIT_SOME_FAILED if result.failed else EXIT_DONE
+
+
+def _facts(folder: Path) -> "list[FileFacts]":
+    from thermo_fix.errors import ImageError, UnclearEncoding
+    from thermo_fix.read import list_images, read_frame
+    from thermo_fix.records import Camera
+    from thermo_fix.sheet import FileFacts
+
+    facts = []
+    for file in list_images(folder):
+        name = file.as_posix()
+        try:
+            frame = read_frame(folder / file, Camera())
+        except UnclearEncoding as error:
+            facts.append(FileFacts(name, 0, 0, note=str(error)))
+            continue
+        except ImageError as error:
+            _problem(str(error))
+            continue
+        rows, columns = frame.shape
+        encoding = frame.encoding
+        facts.append(
+            FileFacts(
+                name,
+                columns,
+                rows,
+                frame.taken,
+                encoding.unit,
+                encoding.scale,
+                encoding.offset,
+                encoding.origin,
+            )
+        )
+    return facts
+
+
+def _quoted(path: Path) -> str:
+    text = str(path)
+    return f'"{text}"' if " " in text else text
+
+
+def _problem(line: str) -> None:
+    print(f"thermo-fix: {line}", file=sys.stderr)
+
+
+def _fail(line: str) -> NoReturn:
+    _problem(line)
+    raise typer.Exit(EXIT_NOT_RUN)

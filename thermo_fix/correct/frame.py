@@ -1,0 +1,276 @@
+"""Correct one image."""
+
+import math
+from collections.abc import Mapping
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_fix import cautions
+from thermo_fix.constants import ZERO_CELSIUS_K
+from thermo_fix.correct.inputs import Models, equation_of, fill_sky, recorded_path, with_input
+from thermo_fix.errors import ImageError
+from thermo_fix.radiometry.air import STRETCHED_BEYOND_M
+from thermo_fix.radiometry.path import correction_map, seen_map
+from thermo_fix.radiometry.surface import STEEP_VIEW_DEG
+from thermo_fix.records import (
+    Camera,
+    CorrectedFrame,
+    Frame,
+    ImageJob,
+    Input,
+    LabelArray,
+    SceneInputs,
+)
+from thermo_fix.uncertainty.equation import MeasurementEquation
+
+_UNCERTAINTY_NODES = 2048
+_LOW_EMISSIVITY = 0.6
+_FOIL_U_K = 0.5
+"""Standard uncertainty of a foil's mean as the reflected temperature, K: foil is no perfect
+mirror and mirrors another part of the surroundings than the target does; judged."""
+
+
+def correct_frame(
+    frame: Frame,
+    reading_k: NDArray[np.float32],
+    job: ImageJob,
+    labels: LabelArray,
+    camera: Camera,
+    models: Models,
+    planes: Mapping[Path, NDArray[np.float32]] | None = None,
+) -> CorrectedFrame:
+    """Correct an image pixel by pixel for emissivity, reflected temperature, air and window.
+
+    Parameters
+    ----------
+    frame
+        The image as read.
+    reading_k
+        Its readings, (rows, columns), K.
+    job
+        What the sheet says of it.
+    labels
+        (rows, columns): 0 for the rest of the image, i + 1 for zone i.
+    camera, models
+        Camera and radiation models.
+    planes
+        Emissivity and reflected-temperature planes by path, each (rows, columns).
+
+    Returns
+    -------
+    CorrectedFrame
+        Surface temperature and standard uncertainty in float32; within 5 mK of the float64
+        formula (tested). Pixels without a solution are NaN.
+
+    Raises
+    ------
+    ImageError
+        A plane of another shape, or a foil zone without pixels.
+
+    """
+    planes = planes or {}
+    inputs = [
+        _complete(every, job, reading_k, labels, camera, models)
+        for every in (job.inputs, *(zone.inputs for zone in job.zones))
+    ]
+    equations = [equation_of(every, camera, models) for every in inputs]
+    emissivity_planes = _planes_by_label(
+        [every.emissivity_file for every in inputs], planes, frame.shape, "emissivity"
+    )
+    reflected_planes = _planes_by_label(
+        [every.reflected_file for every in inputs], planes, frame.shape, "reflected_c"
+    )
+    for plane in emissivity_planes.values():
+        if np.any(~((plane > 0.0) & (plane <= 1.0))):
+            raise ImageError(
+                f"{job.file}: its emissivity file has values that are not above 0 and at most 1; "
+                "correct the file or give one number"
+            )
+    surface_k = _surface_plane(
+        reading_k, labels, equations, models, emissivity_planes, reflected_planes
+    )
+    uncertainty_k = _uncertainty_plane(
+        reading_k, labels, equations, emissivity_planes, reflected_planes
+    )
+    uncertainty_k[np.isnan(surface_k)] = np.nan
+    return CorrectedFrame(
+        job=job,
+        frame=frame,
+        labels=labels,
+        reading_k=reading_k,
+        surface_k=surface_k,
+        uncertainty_k=uncertainty_k,
+        equations=tuple(equations),
+        inputs=tuple(inputs),
+        emissivity_planes=emissivity_planes,
+        reflected_planes=reflected_planes,
+        cautions=_cautions(job, inputs, equations, int(np.count_nonzero(np.isnan(surface_k)))),
+    )
+
+
+def _complete(
+    inputs: SceneInputs,
+    job: ImageJob,
+    reading_k: NDArray[np.float32],
+    labels: LabelArray,
+    camera: Camera,
+    models: Models,
+) -> SceneInputs:
+    if inputs.reflected_zone is None:
+        return fill_sky(inputs)
+    names = [zone.name for zone in job.zones]
+    label = names.index(inputs.reflected_zone) + 1
+    readings = reading_k[labels == label].astype(np.float64)
+    readings = readings[np.isfinite(readings)]
+    if len(readings) < 9:
+        raise ImageError(
+            f"{job.file}: the foil zone {inputs.reflected_zone!r} has {len(readings)} usable "
+            "pixels, too few to measure the reflected temperature; draw it larger"
+        )
+    # Emissivity 1 and distance 0 (ASTM E1862, reflector method): what is seen is what is
+    # reflected. The mean is taken of exitance, because that is what mixes.
+    seen = seen_map(recorded_path(camera.recorded), models.model)
+    exitance = float(np.mean(seen(models.model.exitance(readings))))
+    mean_c = float(models.model.temperature(exitance)) - ZERO_CELSIUS_K
+    half_width = max(camera.accuracy_k, camera.accuracy_fraction * abs(mean_c))
+    return with_input(
+        inputs,
+        Input(
+            "reflected_c",
+            mean_c,
+            math.hypot(half_width / math.sqrt(3.0), _FOIL_U_K),
+            "measured",
+            f"zone {inputs.reflected_zone} of {job.file}",
+            "measured",
+            f"mean of {len(readings)} pixels of the foil zone {inputs.reflected_zone!r}",
+        ),
+    )
+
+
+def _planes_by_label(
+    paths: list[Path | None],
+    planes: Mapping[Path, NDArray[np.float32]],
+    shape: tuple[int, int],
+    key: str,
+) -> dict[int, NDArray[np.float32]]:
+    found = {}
+    for label, path in enumerate(paths):
+        if path is None:
+            continue
+        plane = planes[path]
+        if plane.shape != shape:
+            raise ImageError(
+                f"{path.name}: {key} plane is {plane.shape[1]} x {plane.shape[0]} pixels, the "
+                f"image is {shape[1]} x {shape[0]}; they must be the same"
+            )
+        found[label] = plane
+    return found
+
+
+def _surface_plane(
+    reading_k: NDArray[np.float32],
+    labels: LabelArray,
+    equations: list[MeasurementEquation],
+    models: Models,
+    emissivity_planes: Mapping[int, NDArray[np.float32]],
+    reflected_planes: Mapping[int, NDArray[np.float32]],
+) -> NDArray[np.float32]:
+    # One affine map for each label: a look-up of two numbers per pixel, then one inversion.
+    gains = np.empty(len(equations), np.float32)
+    offsets = np.empty(len(equations), np.float32)
+    for label, equation in enumerate(equations):
+        if equation.emissivity_is_plane or equation.reflected_is_plane:
+            gains[label], offsets[label] = np.nan, np.nan
+            continue
+        affine = correction_map(equation.path(), equation.recorded, models.model)
+        gains[label], offsets[label] = affine.gain, affine.offset
+    exitance = models.model.exitance(reading_k)
+    if len(equations) == 1:
+        surface = np.asarray(models.model.temperature(gains[0] * exitance + offsets[0]))
+    else:
+        surface = np.asarray(models.model.temperature(gains[labels] * exitance + offsets[labels]))
+    for label in sorted({*emissivity_planes, *reflected_planes}):
+        here = labels == label
+        surface[here] = equations[label].temperature_k(
+            reading_k[here],
+            emissivity=_part(emissivity_planes.get(label), here),
+            reflected_c=_part(reflected_planes.get(label), here),
+        )
+    return surface.astype(np.float32, copy=False)
+
+
+def _uncertainty_plane(
+    reading_k: NDArray[np.float32],
+    labels: LabelArray,
+    equations: list[MeasurementEquation],
+    emissivity_planes: Mapping[int, NDArray[np.float32]],
+    reflected_planes: Mapping[int, NDArray[np.float32]],
+) -> NDArray[np.float32]:
+    result = np.full(reading_k.shape, np.nan, np.float32)
+    for label, equation in enumerate(equations):
+        here = slice(None) if len(equations) == 1 else labels == label
+        readings = reading_k[here]
+        if label in emissivity_planes or label in reflected_planes:
+            result[here] = equation.u_k(
+                readings,
+                emissivity=_part(emissivity_planes.get(label), here),
+                reflected_c=_part(reflected_planes.get(label), here),
+            )
+        elif readings.size:
+            result[here] = _uncertainty_by_reading(readings, equation)
+    return result
+
+
+def _uncertainty_by_reading(
+    readings: NDArray[np.float32], equation: MeasurementEquation
+) -> NDArray[np.float32]:
+    # With uniform inputs the uncertainty is a smooth function of the reading alone: the analytic
+    # formula is evaluated on a fine grid of readings and looked up.
+    finite = readings if np.isfinite(readings).all() else readings[np.isfinite(readings)]
+    if finite.size == 0:
+        return np.full(readings.shape, np.nan, np.float32)
+    low, high = float(finite.min()), float(finite.max())
+    step = max((high - low) / (_UNCERTAINTY_NODES - 1), 1e-6)
+    nodes = low + step * np.arange(_UNCERTAINTY_NODES + 1)
+    table = np.asarray(equation.u_k(nodes), np.float32)
+    with np.errstate(invalid="ignore"):
+        position = (readings - np.float32(low)) * np.float32(1.0 / step) + np.float32(0.5)
+        index = np.nan_to_num(position, copy=False).astype(np.int32)
+    return np.asarray(table[index])
+
+
+def _part(
+    plane: NDArray[np.float32] | None, here: slice | NDArray[np.bool_]
+) -> NDArray[np.float32] | None:
+    return None if plane is None else plane[here]
+
+
+def _cautions(
+    job: ImageJob,
+    inputs: list[SceneInputs],
+    equations: list[MeasurementEquation],
+    nan_px: int,
+) -> tuple[str, ...]:
+    found: list[str] = []
+    wheres = ["the image", *(f"zone {zone.name}" for zone in job.zones)]
+    for where, every, equation, ignored in zip(
+        wheres, inputs, equations, [False, *(zone.ignore for zone in job.zones)], strict=True
+    ):
+        if ignored:
+            continue
+        emissivity = every.values["emissivity"]
+        if every.emissivity_file is None and emissivity.value < _LOW_EMISSIVITY:
+            found.append(cautions.low_emissivity(where, emissivity.value))
+        if equation.variables["emissivity"].is_cut and every.emissivity_file is None:
+            found.append(cautions.bounded(where, emissivity.value, emissivity.u))
+        angle = every.value("view_angle_deg")
+        if angle is not None and angle > STEEP_VIEW_DEG:
+            found.append(cautions.steep_view(where, angle))
+        distance = every.value("distance_m")
+        if equation.uses_air_formula and distance is not None and distance > STRETCHED_BEYOND_M:
+            found.append(cautions.stretched_air(distance))
+    if nan_px:
+        found.append(cautions.unsolved(nan_px))
+    return tuple(dict.fromkeys(found))

@@ -1,0 +1,316 @@
+"""Criteria: published or house rules that turn a number into a grade. They are data.
+
+The built-in ones are in ``data/criteria.toml``; a survey may bring a file of its own in the same
+form. A criterion names a quantity, classes with their published wording, and our grade for each.
+"""
+
+import difflib
+import tomllib
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from functools import lru_cache
+from importlib import resources
+from pathlib import Path
+from typing import Any, Literal, cast, get_args
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_fix.errors import SheetError
+from thermo_fix.records import GRADES, Grade, Purpose, Sense
+
+QuantityName = Literal[
+    "like_difference",
+    "rise_over_air",
+    "difference",
+    "surface_c",
+    "surface_factor",
+    "dew_point_margin",
+    "surface_humidity",
+]
+"""What a criterion can compare: difference to a like component (K), rise over the air (K),
+difference to whatever the reference is (K), surface temperature (degC), temperature factor fRsi,
+surface temperature minus dew point (K), relative humidity at the surface (0 to 1)."""
+
+Comparison = Literal["at_least", "above", "at_most", "below"]
+
+DEFAULT_USE: Mapping[Purpose, tuple[str, ...]] = {
+    "building": (
+        "iso13788-surface-factor",
+        "dew-point",
+        "surface-humidity",
+        "house-difference",
+    ),
+    "electrical": ("neta-like-components", "neta-rise-over-air", "house-difference"),
+}
+"""Criteria of a survey whose sheet names none."""
+
+_CRITERION_KEYS = {
+    "id",
+    "title",
+    "source",
+    "quantity",
+    "unit",
+    "senses",
+    "side",
+    "gaps",
+    "settings",
+    "class",
+}
+_CLASS_KEYS = {"label", "text", "grade", "plus", *get_args(Comparison)}
+
+
+@dataclass(frozen=True, slots=True)
+class Setting:
+    """A number that the sheet may set."""
+
+    meaning: str
+    default: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class GradeClass:
+    """One class of a criterion."""
+
+    comparison: Comparison
+    threshold: float | str
+    """A number, or the name of a setting."""
+    plus: str
+    """Name of a setting to be added to the threshold, with a leading ``-`` to subtract it."""
+    label: str
+    text: str
+    grade: Grade
+
+    def limit(self, settings: Mapping[str, float]) -> float:
+        """Return the threshold in numbers."""
+        base = self.threshold if isinstance(self.threshold, float) else settings[self.threshold]
+        if not self.plus:
+            return base
+        sign, name = (-1.0, self.plus[1:]) if self.plus.startswith("-") else (1.0, self.plus)
+        return base + sign * settings[name]
+
+    def holds(
+        self, values: NDArray[np.float64], settings: Mapping[str, float]
+    ) -> NDArray[np.bool_]:
+        """Say for which values the class's condition holds; unrounded values are compared."""
+        limit = self.limit(settings)
+        if self.comparison == "at_least":
+            return values >= limit
+        if self.comparison == "above":
+            return values > limit
+        if self.comparison == "at_most":
+            return values <= limit
+        return values < limit
+
+
+@dataclass(frozen=True, slots=True)
+class Criterion:
+    """A rule that turns a number into a grade."""
+
+    id: str
+    title: str
+    source: str
+    quantity: QuantityName
+    unit: str
+    senses: tuple[Sense, ...]
+    gaps: str
+    classes: tuple[GradeClass, ...]
+    """From mildest to worst."""
+    side: Literal["inside"] | None = None
+    settings: Mapping[str, Setting] = field(default_factory=dict)
+
+    def values_of_settings(
+        self, given: Mapping[str, float]
+    ) -> tuple[dict[str, float], tuple[str, ...]]:
+        """Return the settings in force, and the names of those that must be given but are not."""
+        values: dict[str, float] = {}
+        missing = []
+        for name, setting in self.settings.items():
+            value = given.get(name, setting.default)
+            if value is None:
+                missing.append(name)
+            else:
+                values[name] = value
+        return values, tuple(missing)
+
+    def classify(
+        self, values: NDArray[np.float64], settings: Mapping[str, float]
+    ) -> NDArray[np.int8]:
+        """Class of each value: index into ``classes``, -1 where none holds.
+
+        Parameters
+        ----------
+        values
+            Of the criterion's quantity, any shape; NaN belongs to no class.
+        settings
+            From :meth:`values_of_settings`.
+
+        """
+        result = np.full(np.shape(values), -1, np.int8)
+        for index, every in enumerate(self.classes):
+            result[every.holds(values, settings)] = index
+        return result
+
+
+@lru_cache(maxsize=1)
+def built_in() -> Mapping[str, Criterion]:
+    """Return the built-in criteria by id."""
+    text = resources.files("thermo_fix").joinpath("data/criteria.toml").read_text("utf-8")
+    return {each.id: each for each in parse_criteria(text, "criteria.toml")}
+
+
+def load_criteria(names: Sequence[str], file: Path | None = None) -> tuple[Criterion, ...]:
+    """Return criteria by name, from the built-in ones and a file of the survey's own.
+
+    Parameters
+    ----------
+    names
+        Ids, in the order in which they are to be reported.
+    file
+        TOML in the form of ``data/criteria.toml``; its ids win over built-in ones.
+
+    Raises
+    ------
+    SheetError
+        An unknown name, or a file that is wrong.
+
+    """
+    known = dict(built_in())
+    if file is not None:
+        try:
+            text = file.read_text("utf-8")
+        except (OSError, UnicodeDecodeError) as error:
+            raise SheetError(
+                f"{file.name}: cannot be read ({type(error).__name__}); "
+                "give a UTF-8 TOML file in the survey folder"
+            ) from error
+        known |= {each.id: each for each in parse_criteria(text, file.name)}
+    chosen = []
+    for name in names:
+        if name not in known:
+            near = difflib.get_close_matches(name, known, 1, 0.4)
+            hint = f'; nearest: "{near[0]}"' if near else ""
+            raise SheetError(
+                f'survey.toml: [criteria] use names "{name}", which is no criterion{hint}; '
+                f"known are {', '.join(sorted(known))}"
+            )
+        chosen.append(known[name])
+    return tuple(chosen)
+
+
+def parse_criteria(text: str, file: str) -> tuple[Criterion, ...]:
+    """Parse criteria from TOML.
+
+    Parameters
+    ----------
+    text
+        In the form of ``data/criteria.toml``.
+    file
+        Name for messages.
+
+    Raises
+    ------
+    SheetError
+        One line that says what is wrong where.
+
+    """
+    try:
+        document = tomllib.loads(text)
+    except tomllib.TOMLDecodeError as error:
+        raise SheetError(f"{file}: not valid TOML: {error}") from error
+    tables = document.get("criterion")
+    if not isinstance(tables, list) or not tables or set(document) != {"criterion"}:
+        raise SheetError(f"{file}: must hold [[criterion]] tables and nothing else")
+    parsed = [_criterion(table, file, number) for number, table in enumerate(tables, 1)]
+    ids = [each.id for each in parsed]
+    for each in ids:
+        if ids.count(each) > 1:
+            raise SheetError(f'{file}: the id "{each}" stands twice; give each criterion its own')
+    return tuple(parsed)
+
+
+def _criterion(table: Any, file: str, number: int) -> Criterion:
+    where = f"{file}: criterion {number}"
+    if not isinstance(table, dict):
+        raise SheetError(f"{where}: must be a [[criterion]] table")
+    name = table.get("id")
+    if isinstance(name, str):
+        where = f'{file}: criterion "{name}"'
+    _no_unknown(table, _CRITERION_KEYS, where)
+    texts = {key: _text(table, key, where) for key in ("id", "title", "source", "unit", "gaps")}
+    quantity = table.get("quantity")
+    if quantity not in get_args(QuantityName):
+        raise SheetError(
+            f"{where}: quantity = {quantity!r} is not one of {', '.join(get_args(QuantityName))}"
+        )
+    senses = table.get("senses")
+    if not isinstance(senses, list) or not senses or not set(senses) <= set(get_args(Sense)):
+        raise SheetError(f'{where}: senses must be a list of "hot" and "cold"')
+    side = table.get("side")
+    if side not in (None, "inside"):
+        raise SheetError(f'{where}: side = {side!r}; leave it out or write "inside"')
+    settings = {
+        key: Setting(_text(value, "meaning", f"{where}, setting {key}"), value.get("default"))
+        for key, value in table.get("settings", {}).items()
+    }
+    classes = table.get("class")
+    if not isinstance(classes, list) or not classes:
+        raise SheetError(f"{where}: needs at least one [[criterion.class]]")
+    return Criterion(
+        id=texts["id"],
+        title=texts["title"],
+        source=texts["source"],
+        unit=texts["unit"],
+        gaps=texts["gaps"],
+        quantity=cast("QuantityName", quantity),
+        senses=tuple(senses),
+        side=side,
+        settings=settings,
+        classes=tuple(_grade_class(each, settings, where) for each in classes),
+    )
+
+
+def _grade_class(table: Any, settings: Mapping[str, Setting], where: str) -> GradeClass:
+    if not isinstance(table, dict):
+        raise SheetError(f"{where}: class must be a table")
+    _no_unknown(table, _CLASS_KEYS, f"{where}, class")
+    conditions = [key for key in get_args(Comparison) if key in table]
+    if len(conditions) != 1:
+        raise SheetError(f"{where}: each class needs one of {', '.join(get_args(Comparison))}")
+    threshold = table[conditions[0]]
+    if isinstance(threshold, str):
+        if threshold not in settings:
+            raise SheetError(f'{where}: class refers to the setting "{threshold}", not defined')
+    elif isinstance(threshold, bool) or not isinstance(threshold, int | float):
+        raise SheetError(f"{where}: {conditions[0]} = {threshold!r} must be a number or a setting")
+    else:
+        threshold = float(threshold)
+    plus = table.get("plus", "")
+    if plus and plus.removeprefix("-") not in settings:
+        raise SheetError(f'{where}: plus refers to the setting "{plus}", not defined')
+    grade = table.get("grade")
+    if grade not in GRADES:
+        raise SheetError(f"{where}: grade = {grade!r} is not one of {', '.join(GRADES)}")
+    return GradeClass(
+        comparison=conditions[0],
+        threshold=threshold,
+        plus=plus,
+        label=_text(table, "label", where),
+        text=_text(table, "text", where),
+        grade=grade,
+    )
+
+
+def _no_unknown(table: Mapping[str, Any], known: set[str], where: str) -> None:
+    for key in table:
+        if key not in known:
+            near = difflib.get_close_matches(key, known, 1)
+            hint = f'; nearest known key: "{near[0]}"' if near else ""
+            raise SheetError(f'{where}: unknown key "{key}"{hint}')
+
+
+def _text(table: Mapping[str, Any], key: str, where: str) -> str:
+    value = table.get(key)
+    if not isinstance(value, str) or not value.strip():
+        raise SheetError(f"{where}: {key} must be a text")
+    return value

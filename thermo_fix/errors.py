@@ -1,0 +1,63 @@
+"""Everything that thermo_fix raises on purpose.
+
+::
+
+    ThermoFixError
+    ├── DomainError (also ValueError)   a number outside the range of a formula
+    ├── SurveyError                     the survey cannot be run; nothing is written
+    │   ├── FolderError                 no such folder, nothing to read, not writable
+    │   └── SheetError                  the survey sheet is wrong; may carry several lines
+    └── ImageError                      one image is lost, the rest of the survey is done
+        ├── UnreadableImage             not a TIFF, truncated, an unknown compression
+        ├── NotAMeasurement             a picture (palette, RGB), not radiometric
+        └── UnclearEncoding             the values could mean more than one temperature
+
+Each message is one line that a user can act on: which file, which key, what is wrong, what to do.
+"""
+
+from collections.abc import Sequence
+
+
+class ThermoFixError(Exception):
+    """Base of all errors that the package raises on purpose."""
+
+
+class DomainError(ThermoFixError, ValueError):
+    """A quantity lies outside the range in which a formula holds."""
+
+
+class SurveyError(ThermoFixError):
+    """The survey as a whole cannot be run."""
+
+
+class FolderError(SurveyError):
+    """The survey folder or the output folder cannot be used."""
+
+
+class SheetError(SurveyError):
+    """The survey sheet is wrong.
+
+    ``problems`` holds one line for each thing to mend, in the order of the file.
+    """
+
+    def __init__(self, problems: str | Sequence[str]) -> None:
+        self.problems: tuple[str, ...] = (
+            (problems,) if isinstance(problems, str) else tuple(problems)
+        )
+        super().__init__("\n".join(self.problems))
+
+
+class ImageError(ThermoFixError):
+    """One image cannot be used; the others can."""
+
+
+class UnreadableImage(ImageError):
+    """The file is no TIFF, is damaged, or is compressed in a way that is not supported."""
+
+
+class NotAMeasurement(ImageError):
+    """The file is a picture for the eye, without radiometric values."""
+
+
+class UnclearEncoding(ImageError):
+    """The pixel values leave more than one physical meaning; the sheet must state it."""

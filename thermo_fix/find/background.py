@@ -1,0 +1,123 @@
+"""The smooth, robust background of a zone: what its temperature would be without findings."""
+
+import cv2
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_fix.records import MaskArray
+
+_SAMPLE = 6000
+"""Pixels that the polynomial is fitted to: more change nothing that matters."""
+_TUKEY = 4.685
+"""Tuning constant of Tukey's biweight (95 % efficiency for normal noise; Huber and Ronchetti,
+Robust Statistics, 2nd ed., table 4.4 - from memory)."""
+_ROUNDS = 20
+_LARGE_ZONE_PX = 4000
+_SMALL_ZONE_PX = 150
+_SMOOTHING_SHARE = 0.10
+"""Smoothing length as a share of the zone's longer side: structure much wider than this is
+background."""
+
+
+def background(
+    temperature: NDArray[np.float32],
+    inside: MaskArray,
+    scale_k: float,
+    sigma_k: float,
+) -> NDArray[np.float32]:
+    """Return the smooth background of one zone.
+
+    A low-order polynomial is fitted robustly, so that regions of either sense do not pull it
+    towards themselves; then it follows the zone's own broad structure by smoothing what is left
+    over, with everything that might be a finding left out and bridged.
+
+    Parameters
+    ----------
+    temperature
+        (rows, columns), K or degC.
+    inside
+        (rows, columns), pixels of the zone that may be used.
+    scale_k
+        Smallest difference that counts as a finding, K.
+    sigma_k
+        Pixel noise, K.
+
+    Returns
+    -------
+    ndarray
+        (rows, columns), NaN outside.
+
+    """
+    result = np.full(temperature.shape, np.nan, np.float32)
+    rows, columns = np.nonzero(inside)
+    if len(rows) == 0:
+        return result
+    values = temperature[rows, columns].astype(np.float64)
+    extent = int(max(np.ptp(rows), np.ptp(columns))) + 1
+    x = (columns - columns.mean()) / extent * 2.0
+    y = (rows - rows.mean()) / extent * 2.0
+    terms = _terms(x, y, len(rows))
+    step = max(1, len(rows) // _SAMPLE)
+    fitted: NDArray[np.float64] = terms @ _robust_fit(terms[::step], values[::step], sigma_k)
+    if len(rows) >= _LARGE_ZONE_PX:
+        for _ in range(2):
+            fitted += _broad_structure(
+                values - fitted, rows, columns, temperature.shape, extent, scale_k, sigma_k
+            )
+    result[rows, columns] = fitted
+    return result
+
+
+def _terms(x: NDArray[np.float64], y: NDArray[np.float64], count: int) -> NDArray[np.float64]:
+    one = np.ones_like(x)
+    if count < _SMALL_ZONE_PX:
+        return np.stack([one], axis=1)
+    if count < _LARGE_ZONE_PX:
+        return np.stack([one, x, y], axis=1)
+    return np.stack([one, x, y, x * x, x * y, y * y], axis=1)
+
+
+def _robust_fit(
+    terms: NDArray[np.float64], values: NDArray[np.float64], sigma_k: float
+) -> NDArray[np.float64]:
+    """Iteratively reweighted least squares with Tukey's biweight, from the median."""
+    coefficients: NDArray[np.float64] = np.zeros(terms.shape[1])
+    coefficients[0] = np.median(values)
+    for _ in range(_ROUNDS):
+        residual = values - terms @ coefficients
+        # Half of the pixels may belong to findings; the half that fits best tells the spread.
+        spread = max(1.4826 * float(np.median(np.abs(residual))), sigma_k, 1e-3)
+        weight = np.square(np.clip(1.0 - np.square(residual / (_TUKEY * spread)), 0.0, None))
+        weighted = terms * weight[:, None]
+        normal = weighted.T @ terms + 1e-9 * len(values) * np.eye(terms.shape[1])
+        new = np.asarray(np.linalg.solve(normal, weighted.T @ values), np.float64)
+        settled = np.max(np.abs(new - coefficients)) < 1e-4
+        coefficients = new
+        if settled:
+            break
+    return coefficients
+
+
+def _broad_structure(
+    residual: NDArray[np.float64],
+    rows: NDArray[np.intp],
+    columns: NDArray[np.intp],
+    shape: tuple[int, ...],
+    extent: int,
+    scale_k: float,
+    sigma_k: float,
+) -> NDArray[np.float64]:
+    """Normalised smoothing of the residual without the candidates, at the zone's pixels."""
+    field = np.zeros(shape, np.float32)
+    field[rows, columns] = residual
+    weight = np.zeros(shape, np.float32)
+    weight[rows, columns] = 1.0
+    limit = max(0.5 * scale_k, 3.0 * sigma_k)
+    candidate = (np.abs(cv2.blur(field, (3, 3))) > limit).astype(np.uint8)
+    weight[cv2.dilate(candidate, np.ones((7, 7), np.uint8)) > 0] = 0.0
+    length = max(2.0, _SMOOTHING_SHARE * extent)
+    weighted = cv2.GaussianBlur(field * weight, (0, 0), length, borderType=cv2.BORDER_CONSTANT)
+    total = cv2.GaussianBlur(weight, (0, 0), length, borderType=cv2.BORDER_CONSTANT)
+    # Where hardly any background is near, the polynomial alone has to do.
+    smooth = weighted / np.maximum(total, 1e-6) * np.clip(total / 0.05, 0.0, 1.0)
+    return np.asarray(smooth[rows, columns], np.float64)

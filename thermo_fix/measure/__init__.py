@@ -1,0 +1,6 @@
+"""Measure: what a region's temperature and differences are, with their uncertainty."""
+
+from thermo_fix.measure.findings import measure_regions
+from thermo_fix.measure.image import measure_image
+
+__all__ = ["measure_image", "measure_regions"]

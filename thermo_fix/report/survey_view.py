@@ -1,0 +1,268 @@
+"""The survey as a whole, and its images, in words and rounded numbers."""
+
+from collections.abc import Iterator, Sequence
+from typing import Final
+
+from thermo_fix import cautions
+from thermo_fix.records import Grade, ImageResult, InputLine, SurveyResult
+from thermo_fix.report.catalogue import Words
+from thermo_fix.report.finding_view import FindingViews
+from thermo_fix.report.formatting import Units, iso, percent
+from thermo_fix.report.view import (
+    GRADE_KEYS,
+    CriterionText,
+    FileRow,
+    ImageView,
+    InputRow,
+    ReportView,
+)
+
+MOST_CARDS: Final = 12
+"""Findings shown as cards at the head of the report; the table holds them all."""
+
+FEWEST_CARDS: Final = 3
+"""Cards shown where no finding is graded ``act`` or ``plan``."""
+
+DECISIVE_INPUTS: Final = frozenset({"emissivity", "reflected_c"})
+"""Inputs that carry most of a correction: assumed, they are announced at the head."""
+
+
+class SurveyViews:
+    """Turns one SurveyResult into what the page says."""
+
+    def __init__(
+        self,
+        result: SurveyResult,
+        words: Words,
+        *,
+        version: str,
+        criteria: Sequence[CriterionText] = (),
+    ) -> None:
+        self._result = result
+        self._words = words
+        self._version = version
+        self._criteria = criteria
+        self._units = Units(result.survey.temperature_unit)
+        self._findings = FindingViews(result, words, self._units)
+        self._image_numbers = {image.file: n for n, image in enumerate(result.images, start=1)}
+
+    # ------------------------------------------------------------ the whole
+
+    def report(self) -> ReportView:
+        """Everything but the sections of the images."""
+        result, words = self._result, self._words
+        findings = tuple(self._findings.view(finding) for finding in result.findings)
+        pressing = [view for view in findings if view.grade in ("act", "plan")]
+        cards = tuple(pressing[:MOST_CARDS]) or findings[:FEWEST_CARDS]
+        left_out = (len(pressing) or len(findings)) - len(cards)
+        return ReportView(
+            title=result.survey.title,
+            purpose=result.survey.purpose,
+            model=result.survey.model,
+            facts=self._title_block(),
+            assumed=self._assumed(),
+            survey_notes=result.survey.notes,
+            counts=tuple(
+                (
+                    key,
+                    words.of("grade", key),
+                    words.of("grade_meaning", key),
+                    sum(view.grade == key for view in findings),
+                )
+                for key in GRADE_KEYS
+            ),
+            cards=cards,
+            more=words.count("act.more", left_out) if left_out else "",
+            outcome=self._outcome(),
+            failed=tuple(self.image(image) for image in result.failed),
+            findings=findings,
+            conditions=result.conditions,
+            untold=tuple(c.name for c in result.conditions if c.state == "not told"),
+            criteria=self._criteria_texts(),
+            cautions=self._cautions(),
+            files=tuple(
+                FileRow(image.file, words.of("status", image.status), image.sha256 or "")
+                for image in result.images
+            ),
+            units=self._units,
+        )
+
+    def images(self) -> Iterator[ImageView]:
+        """The images one after another, so that a large survey does not fill the memory."""
+        for image in self._result.images:
+            yield self.image(image)
+
+    def _title_block(self) -> tuple[tuple[str, str], ...]:
+        survey, words = self._result.survey, self._words
+        total, failed = len(self._result.images), len(self._result.failed)
+        images = words.count("masthead.done", total, done=total - failed)
+        if failed:
+            images += "; " + words.count("masthead.failed", failed)
+        not_told = words("common.not_told")
+        return (
+            (words("masthead.purpose"), words.of("purpose", survey.purpose)),
+            (words("masthead.date"), iso(survey.date) if survey.date else not_told),
+            (words("masthead.surveyor"), survey.surveyor or not_told),
+            (words("masthead.images"), images),
+            (words("masthead.model"), words.of("model", survey.model)),
+            (words("masthead.software"), f"thermo_fix {self._version}"),
+        )
+
+    def _assumed(self) -> tuple[str, ...]:
+        """Sentences for the banner on the face of the report."""
+        words = self._words
+        lines = [(image.file, line) for image in self._result.images for line in image.inputs]
+        assumed = [(file, line) for file, line in lines if line.origin == "assumed"]
+        keys = {line.key for _, line in assumed}
+        without_sheet = self._result.survey.sheet is None
+        mostly = 2 * len(assumed) > len(lines)
+        if not (without_sheet or keys & DECISIVE_INPUTS or mostly):
+            return ()
+        sentences = [words("assumed.no_sheet")] if without_sheet else []
+        if assumed:
+            sentences.append(words("assumed.count", n=len(assumed), total=len(lines)))
+            parts = []
+            for key in sorted(keys, key=lambda key: (key not in DECISIVE_INPUTS, key)):
+                files = len({file for file, line in assumed if line.key == key})
+                parts.append(words.count("assumed.input", files, name=words.of("input", key)))
+            sentences.append(words("assumed.which", list="; ".join(parts)))
+        return tuple(sentences)
+
+    def _outcome(self) -> str:
+        result, words = self._result, self._words
+        if not result.images:
+            return words("outcome.empty")
+        if len(result.failed) == len(result.images):
+            return words.count("outcome.all_failed", len(result.failed))
+        if result.findings:
+            return ""
+        done = {image.file for image in result.images if image.status == "done"}
+        settings = [job.detect for job in result.survey.images if job.file in done]
+        if not settings:
+            return words.count("outcome.none", len(done))
+        delta = self._units.difference(min(s.min_delta_k for s in settings), sign=False)
+        return words.count(
+            "outcome.none_by",
+            len(done),
+            area=min(s.min_area_px for s in settings),
+            delta=delta.plain if delta else "",
+        )
+
+    def _criteria_texts(self) -> tuple[CriterionText, ...]:
+        """The texts that were handed over, and for other criteria what the gradings quote."""
+        texts = {text.criterion: text for text in self._criteria}
+        seen: dict[str, dict[tuple[str, str], Grade | None]] = {}
+        titles: dict[str, str] = {}
+        for finding in self._result.findings:
+            for grading in finding.gradings:
+                titles.setdefault(grading.criterion, grading.title)
+                classes = seen.setdefault(grading.criterion, {})
+                if grading.class_label or grading.class_text:
+                    classes[grading.class_label, grading.class_text] = grading.grade
+        for criterion, title in titles.items():
+            if criterion not in texts:
+                texts[criterion] = CriterionText(
+                    criterion=criterion,
+                    title=title,
+                    classes=tuple((*key, grade) for key, grade in seen[criterion].items()),
+                )
+        return tuple(texts[key] for key in sorted(texts))
+
+    def _cautions(self) -> tuple[str, ...]:
+        standing = (
+            *cautions.general(self._result.survey.purpose),
+            self._words("caution.conditions"),
+        )
+        return tuple(dict.fromkeys((*standing, *self._result.cautions)))
+
+    # ------------------------------------------------------------ one image
+
+    def image(self, image: ImageResult) -> ImageView:
+        """One image with its findings in the order of their rank."""
+        words = self._words
+        number = self._image_numbers[image.file]
+        findings = sorted(image.findings, key=self._findings.number)
+        views = tuple(self._findings.view(finding) for finding in findings)
+        done = image.status == "done"
+        title = image.asset or image.file
+        return ImageView(
+            number=number,
+            anchor=f"image-{number}",
+            title=title,
+            file=image.file,
+            done=done,
+            error=self._error(image),
+            note=image.note,
+            facts=self._image_facts(image),
+            findings=views,
+            inputs=tuple(self._input(line) for line in image.inputs),
+            origins=self._origins(image.inputs),
+            unsolved=self._unsolved(image),
+            notes=image.notes,
+            cautions=image.cautions,
+            picture_text=" ".join(
+                [
+                    words("picture.alt", title=title),
+                    *([view.summary for view in views] or [words("picture.alt_no_finding")]),
+                ]
+            ),
+        )
+
+    def _error(self, image: ImageResult) -> str:
+        """Why an image failed, without its name in front."""
+        if image.status == "done":
+            return ""
+        return (image.error or "").removeprefix(f"{image.file}: ") or self._words(
+            "failed.no_reason"
+        )
+
+    def _image_facts(self, image: ImageResult) -> tuple[tuple[str, str], ...]:
+        words, units = self._words, self._units
+        facts: list[tuple[str, str]] = [(words("image.file"), image.file)]
+        if image.taken is not None:
+            facts.append((words("image.taken"), iso(image.taken)))
+        if image.width and image.height:
+            size = words("image.size_value", width=image.width, height=image.height)
+            facts.append((words("image.size"), size))
+        low, high = units.temperature(image.min_c), units.temperature(image.max_c)
+        if low and high:
+            text = words("image.range_value", low=low.value, high=high.plain)
+            facts.append((words("image.range"), text))
+        median = units.temperature(image.median_c, image.u_median_k)
+        if median:
+            facts.append((words("image.median"), median.text))
+        recorded = units.temperature(image.recorded_median_c)
+        if recorded:
+            facts.append((words("image.recorded_median"), recorded.plain))
+        return tuple(facts)
+
+    def _unsolved(self, image: ImageResult) -> str:
+        if not image.unsolved_px:
+            return ""
+        total = (image.width or 0) * (image.height or 0)
+        if not total:
+            return self._words.count("image.unsolved", image.unsolved_px)
+        return self._words.count(
+            "image.unsolved_share", image.unsolved_px, share=percent(image.unsolved_px / total)
+        )
+
+    def _origins(self, lines: Sequence[InputLine]) -> str:
+        counts: dict[str, int] = {}
+        for line in lines:
+            counts[line.origin] = counts.get(line.origin, 0) + 1
+        return ", ".join(
+            f"{number} {self._words.of('origin', origin)}" for origin, number in counts.items()
+        )
+
+    def _input(self, line: InputLine) -> InputRow:
+        words = self._words
+        value, u = self._units.input_and_u(line.value, line.u, line.unit)
+        return InputRow(
+            label=words.of("input", line.key),
+            where=line.where,
+            value=line.text or value or words("common.not_told"),
+            u=u or words("common.none"),
+            origin=line.origin.replace(" ", "-"),
+            origin_word=words.of("origin", line.origin),
+            note=line.note,
+        )

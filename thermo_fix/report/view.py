@@ -1,0 +1,211 @@
+"""What the page says, as plain data: every number already rounded, every phrase already chosen.
+
+Built by ``survey_view``, ``finding_view``, ``grading_view`` and ``budget_view`` from a
+SurveyResult without any HTML, so that it can be tested without any.
+"""
+
+from dataclasses import dataclass
+from typing import Final, Literal
+
+from thermo_fix.records import Condition, Grade, ModelName, Purpose, Sense
+from thermo_fix.report.formatting import Measured, Units
+
+GradeKey = Literal["act", "plan", "watch", "note", "ungraded"]
+GRADE_KEYS: Final[tuple[GradeKey, ...]] = ("act", "plan", "watch", "note", "ungraded")
+"""Worst first, as the report counts them."""
+
+
+@dataclass(frozen=True, slots=True)
+class CriterionText:
+    """A criterion with its published text, as the page prints it."""
+
+    criterion: str
+    """Identifier."""
+    title: str
+    source: str = ""
+    classes: tuple[tuple[str, str, Grade | None], ...] = ()
+    """Published class, published meaning, our grade."""
+    note: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Chance:
+    """Probability of one grade, as a piece of a bar."""
+
+    key: str
+    word: str
+    start: float
+    width: float
+    """Per cent of the bar."""
+    text: str
+
+
+@dataclass(frozen=True, slots=True)
+class GradingView:
+    """One criterion applied to one finding."""
+
+    criterion: str
+    title: str
+    quantity: str
+    value: str | None
+    grade: GradeKey
+    grade_word: str
+    class_label: str
+    class_text: str
+    chances: tuple[Chance, ...]
+    needs: str | None
+    settle: str
+    note: str
+    decides: bool
+    """Whether the finding's grade comes from here."""
+
+
+@dataclass(frozen=True, slots=True)
+class BudgetRow:
+    """One line of a budget."""
+
+    input: str
+    value: str
+    u: str
+    sensitivity: str
+    contribution: str
+    bar: float
+    """Per cent of the longest bar."""
+    share: str
+    """Share of the variance."""
+
+
+@dataclass(frozen=True, slots=True)
+class BudgetView:
+    """The contributions to one standard uncertainty, largest first."""
+
+    of: str
+    rows: tuple[BudgetRow, ...]
+    total: str
+    """Standard uncertainty, k = 1."""
+
+
+@dataclass(frozen=True, slots=True)
+class FindingView:
+    """One finding."""
+
+    number: int
+    """Rank in the survey, 1 is the worst."""
+    anchor: str
+    id: str
+    image_anchor: str
+    image_title: str
+    file: str
+    zone: str
+    title: str
+    """The zone, or without one the image's asset or file."""
+    whereabouts: str
+    """Asset and file, as far as the title does not say them."""
+    sense: Sense
+    sense_word: str
+    grade: GradeKey
+    grade_word: str
+    doubt: str
+    """How probable the grade is, in words; empty where not known."""
+    temperature: Measured | None
+    interval: str
+    mean: Measured | None
+    apparent: Measured | None
+    reference: str
+    reference_temperature: Measured | None
+    difference: Measured | None
+    comparison: str
+    """Difference, its uncertainty and the reference in one phrase."""
+    against: str
+    """The phrase without the number: ``warmer than like component (lug A)``."""
+    location: str
+    area: str
+    quote: GradingView | None
+    """The grading that decided the grade."""
+    ungraded_why: str
+    gradings: tuple[GradingView, ...]
+    settle: str
+    step: str
+    cautions: tuple[str, ...]
+    budgets: tuple[BudgetView, ...]
+    method: str
+    band_model: str
+    correlated: str
+    summary: str
+    """All that matters in one sentence; the text alternative of its pictures."""
+
+
+@dataclass(frozen=True, slots=True)
+class InputRow:
+    """One input of one image."""
+
+    label: str
+    where: str
+    value: str
+    u: str
+    origin: str
+    """Key of the origin, without spaces."""
+    origin_word: str
+    note: str
+
+
+@dataclass(frozen=True, slots=True)
+class ImageView:
+    """One image."""
+
+    number: int
+    anchor: str
+    title: str
+    file: str
+    done: bool
+    error: str
+    note: str
+    facts: tuple[tuple[str, str], ...]
+    findings: tuple[FindingView, ...]
+    inputs: tuple[InputRow, ...]
+    origins: str
+    """How many inputs came from where, in words."""
+    unsolved: str
+    notes: tuple[str, ...]
+    cautions: tuple[str, ...]
+    picture_text: str
+    """Text alternative of the corrected picture."""
+
+
+@dataclass(frozen=True, slots=True)
+class FileRow:
+    """One source file."""
+
+    file: str
+    status: str
+    sha256: str
+
+
+@dataclass(frozen=True, slots=True)
+class ReportView:
+    """The page, apart from its images, which are built one at a time."""
+
+    title: str
+    purpose: Purpose
+    model: ModelName
+    facts: tuple[tuple[str, str], ...]
+    """Label and value of each field of the title block."""
+    assumed: tuple[str, ...]
+    """Sentences of the banner; empty where the inputs were given."""
+    survey_notes: tuple[str, ...]
+    counts: tuple[tuple[GradeKey, str, str, int], ...]
+    """Grade, word, meaning, number of findings."""
+    cards: tuple[FindingView, ...]
+    more: str
+    """What the cards leave out, in words."""
+    outcome: str
+    """What it means that there is nothing to show, in words; empty where there is something."""
+    failed: tuple[ImageView, ...]
+    findings: tuple[FindingView, ...]
+    conditions: tuple[Condition, ...]
+    untold: tuple[str, ...]
+    """Names of the conditions that the survey was not told."""
+    criteria: tuple[CriterionText, ...]
+    cautions: tuple[str, ...]
+    files: tuple[FileRow, ...]
+    units: Units
