@@ -161,7 +161,8 @@ def factor_grading(value: float, grade: Grade | None) -> Grading:
         grade,
         "below the limit" if grade else "at or above the limit",
         "surface humidity critical for mould growth" if grade else "",
-        {"none": 0.17, "plan": 0.83} if grade else {"none": 0.97, "plan": 0.03},
+        {"none": 0.17, grade: 0.83} if grade else {"none": 0.97, "plan": 0.03},
+        settle="indoor air temperature, to 0.5 K",
         note="limit 0.70, 20 °C inside and −5 °C outside",
     )
 
@@ -222,7 +223,7 @@ def make_finding(
         contours=(ellipse(x, y, half_width, half_height),),
         budget=budget(extreme) if u is not None else (),
         delta_budget=budget(extreme)[1:3] if u is not None else (),
-        settle="load of lug B, to 2 %" if grade == "plan" else "",
+        settle=decisive.settle if decisive and grade == "plan" else "",
         apparent_c=extreme - 3.1,
         model_difference_k=0.42,
         method="Monte Carlo" if grade == "act" else "first order",

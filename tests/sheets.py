@@ -1,4 +1,4 @@
-"""Sheets and helpers that several tests of the survey sheet use."""
+"""Sheets and functions that several tests of the survey sheet use."""
 
 from pathlib import Path
 

@@ -293,6 +293,15 @@ def test_uncertainty_is_given_or_assumed(tmp_path: Path) -> None:
     assert {one.origin for one in values.values()} == {"given"}
 
 
+def test_assumed_uncertainty_is_at_most_the_value(tmp_path: Path) -> None:
+    text = "[scene]\nemissivity = 0.02\nhumidity = 0\ndistance_m = 0\nair_c = 0.1\n"
+    values = load(tmp_path, text, "a.tif").images[0].inputs.values
+    assert values["emissivity"].u == 0.02
+    assert values["humidity"].u == 0.05
+    assert values["distance_m"].u == 0.0
+    assert values["air_c"].u == 1.0
+
+
 def test_reflected_temperature_not_told_follows_the_air(tmp_path: Path) -> None:
     survey = load(tmp_path, "[scene]\nair_c = 4\n" + IMAGE + ZONE + "air_c = 30\n")
     image, zone = survey.images[0].inputs.values, survey.images[0].zones[0].inputs.values

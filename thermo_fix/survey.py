@@ -184,6 +184,11 @@ def process_image(task: ImageTask, store: "_PictureStore") -> ImageResult:
     found = find_regions(corrected)
     if found.spikes:
         notes = (*notes, f"{found.spikes} isolated pixels were bridged when looking for findings.")
+    if found.unlike:
+        notes = (
+            *notes,
+            f"{found.unlike} regions were left out: their zone's like zones show the same.",
+        )
     findings = tuple(
         grade_finding(each, task.criteria, task.survey.criteria_settings)
         for each in measure_regions(corrected, found.regions, camera, str(task.number))

@@ -65,7 +65,7 @@ min_delta_k = 2.0
 min_area_px = 9
 
 [criteria]
-use = ["neta-like-components", "neta-rise-over-air", "absolute-limit"]
+use = ["neta-like-components", "neta-rise-over-air", "absolute-limit", "house-difference"]
 
 [[image]]
 file = "IR_0201.tif"

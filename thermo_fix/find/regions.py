@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from thermo_fix.find.background import background
 from thermo_fix.find.noise import noise_sigma, without_spikes
-from thermo_fix.find.segment import box_mean, outline_regions
+from thermo_fix.find.segment import Outline, box_mean, outline_regions
 from thermo_fix.records import CorrectedFrame, DetectSettings, MaskArray, Region, Sense
 
 _MARGIN_PX = 3
@@ -18,6 +18,9 @@ _SMALL_REST_PX = 400
 _RING_GAP_PX = 3
 _RING_WIDTH_PX = 6
 _EDGE_BLUR_PX = 1
+_STAND_OUT = 0.7
+"""Share of the smallest difference by which a region must differ from its ring: less than 1,
+because the ring of a region on a slope is not level."""
 
 
 class Found(NamedTuple):
@@ -28,6 +31,8 @@ class Found(NamedTuple):
     """Pixel noise of the corrected image, K."""
     spikes: int
     """Defective pixels that were bridged."""
+    unlike: int = 0
+    """Regions left out because their zone's like zones show the same."""
 
 
 def find_regions(corrected: CorrectedFrame) -> Found:
@@ -65,9 +70,10 @@ def find_regions(corrected: CorrectedFrame) -> Found:
         if label == 0 and np.count_nonzero(inside) < _SMALL_REST_PX and job.zones:
             continue
         regions += _search(temperature, inside, label, senses, detect, sigma)
-    regions = [_with_like(corrected, temperature, usable, region) for region in regions]
-    regions += _whole_zones(corrected, temperature, usable, senses, regions)
-    return Found(tuple(regions), sigma, spikes)
+    referred = [_with_like(corrected, temperature, usable, region) for region in regions]
+    local = [region for region in referred if region is not None]
+    whole = _whole_zones(corrected, temperature, usable, senses, local)
+    return Found((*local, *whole), sigma, spikes, len(referred) - len(local))
 
 
 def _searched(corrected: CorrectedFrame, label: int, usable: MaskArray) -> MaskArray:
@@ -100,12 +106,15 @@ def _search(
         for outline in outline_regions(
             excess, inside, detect.min_delta_k, detect.min_area_px, sigma
         ):
+            ring = _ring(outline.mask, inside)
+            if not _stands_out(temperature, outline, ring, sign, detect.min_delta_k):
+                continue
             region = _region(
                 outline.mask,
                 label=label,
                 sense=sense,
                 extreme_px=outline.peak_px,
-                reference_px=_ring(outline.mask, inside),
+                reference_px=ring,
                 ring_delta_k=sign * outline.peak_k,
             )
             regions.append(region)
@@ -136,6 +145,26 @@ def _region(
         cut_by_frame=x0 == 0 or y0 == 0 or x1 == width or y1 == height,
         ring_delta_k=ring_delta_k,
     )
+
+
+def _stands_out(
+    temperature: NDArray[np.float32],
+    outline: Outline,
+    ring: tuple[tuple[int, int], ...],
+    sign: float,
+    min_delta_k: float,
+) -> bool:
+    """Say whether a region differs from what lies around it, not only from the fitted background.
+
+    Where a strong gradient bends, the background misses it, and the bend would be a region.
+    """
+    if not ring:
+        return True
+    columns, rows = np.array(ring).T
+    around = float(np.median(temperature[rows, columns]))
+    x, y = outline.peak_px
+    window = temperature[max(0, y - 1) : y + 2, max(0, x - 1) : x + 2]
+    return sign * (float(np.nanmean(window)) - around) >= _STAND_OUT * min_delta_k
 
 
 def _ring(mask: MaskArray, inside: MaskArray) -> tuple[tuple[int, int], ...]:
@@ -200,8 +229,12 @@ def _with_like(
     temperature: NDArray[np.float32],
     usable: MaskArray,
     region: Region,
-) -> Region:
-    """Refer a region in a zone that has like zones to one of them, at the same statistic."""
+) -> Region | None:
+    """Refer a region in a zone that has like zones to one of them, at the same statistic.
+
+    None where the like zones show the same: then the region is only the sound part of a zone
+    whose background was drawn away by a fault.
+    """
     others = _others(corrected, region.label)
     spots: dict[int, tuple[int, int]] = {}
     levels: dict[int, float] = {}
@@ -213,6 +246,12 @@ def _with_like(
         levels[other] = float(box_mean(temperature, inside)[y, x])
     if not levels:
         return region
+    sign = 1.0 if region.sense == "hot" else -1.0
+    x, y = region.extreme_px
+    own = float(box_mean(temperature, corrected.labels == region.label)[y, x])
+    farthest = max(sign * (own - level) for level in levels.values())
+    if farthest < corrected.job.detect.min_delta_k:
+        return None
     chosen, used = _like_reference(levels, region.sense)
     return replace(
         region,
@@ -254,6 +293,8 @@ def _whole_zones(
             delta = sign * (medians[label] - medians[chosen])
             if delta <= corrected.job.detect.min_delta_k:
                 continue
+            if not _is_the_odd_one(medians[label], others, sense, senses, delta):
+                continue
             region = _region(
                 inside,
                 label=label,
@@ -272,3 +313,19 @@ def _whole_zones(
                 )
             )
     return found
+
+
+def _is_the_odd_one(
+    own: float, others: dict[int, float], sense: Sense, senses: list[Sense], delta: float
+) -> bool:
+    """Say whether a zone is the one that differs, and not what it differs from.
+
+    Of three zones with one warm, the other two are not cold: the odd one lies farther from the
+    middle of the group. Of two nothing can be told; the warm one is then named, if warm findings
+    are wanted.
+    """
+    if len(others) == 1:
+        return sense == "hot" or "hot" not in senses
+    sign = 1.0 if sense == "hot" else -1.0
+    middle = float(np.median([own, *others.values()]))
+    return sign * (own - middle) > 0.5 * delta

@@ -255,7 +255,7 @@ def _cautions(
     inputs = corrected.inputs[region.label]
     where = where_words(corrected, region.label)
     found: list[str] = []
-    if region.cut_by_frame:
+    if region.cut_by_frame and not region.whole_zone:
         found.append(cautions.cut_by_frame())
     width, height = _least_extent(region.mask)
     if min(width, height) < MEASURABLE_FOOTPRINTS:

@@ -16,6 +16,9 @@ _LABEL_SHARE: Final = 0.052
 """Size of a label as a share of the picture's width, for keeping labels apart (about 21 px of a
 picture 400 px wide)."""
 
+_CROP_LABEL_SHARE: Final = 0.08
+"""The same for a crop, which is drawn about 270 px wide."""
+
 _CROP_ASPECT: Final = 4.0 / 3.0
 _CROP_SHARE: Final = 0.3
 """Smallest width of a crop as a share of the picture: enough around a finding to recognise."""
@@ -117,7 +120,7 @@ def marks(findings: Iterable[tuple[int, Finding]], width: int, height: int) -> t
     taken: list[tuple[float, float]] = []
     drawn: list[Mark] = []
     for number, finding in findings:
-        x, y = _label_place(finding.bbox_px, width, height, taken)
+        x, y = _label_place(finding.bbox_px, width, height, _LABEL_SHARE * width, taken)
         taken.append((x, y))
         drawn.append(
             Mark(
@@ -134,16 +137,20 @@ def marks(findings: Iterable[tuple[int, Finding]], width: int, height: int) -> t
 
 
 def _label_place(
-    bbox: tuple[int, int, int, int],
-    width: int,
-    height: int,
+    bbox: tuple[float, float, float, float],
+    width: float,
+    height: float,
+    size: float,
     taken: Sequence[tuple[float, float]],
 ) -> tuple[float, float]:
-    """The first place beside a box that hides no other label; the first of all if none does."""
+    """The first place beside a box that hides neither the box nor another label.
+
+    Failing that, the first that hides no label; failing that, the first of all.
+    """
     x0, y0, x1, y1 = bbox
-    size = _LABEL_SHARE * width
     gap = 0.7 * size
     middle_x, middle_y = (x0 + x1) / 2.0, (y0 + y1) / 2.0
+    half_wide, half_high = (x1 - x0 + size) / 2.0, (y1 - y0 + size) / 2.0
     wanted = (
         (x0 - gap, y0 - gap),
         (x1 + gap, y0 - gap),
@@ -158,16 +165,15 @@ def _label_place(
     places = [
         (min(max(x, edge), width - edge), min(max(y, edge), height - edge)) for x, y in wanted
     ]
-
-    def free(place: tuple[float, float]) -> bool:
-        return all(
-            max(abs(place[0] - other[0]), abs(place[1] - other[1])) >= size for other in taken
-        )
-
-    outside = [
-        place for place in places if not (x0 < place[0] < x1 and y0 < place[1] < y1) and free(place)
+    apart = [
+        (x, y)
+        for x, y in places
+        if all(max(abs(x - other_x), abs(y - other_y)) >= size for other_x, other_y in taken)
     ]
-    return next(iter(outside or [place for place in places if free(place)] or places))
+    clear = [
+        (x, y) for x, y in apart if abs(x - middle_x) >= half_wide or abs(y - middle_y) >= half_high
+    ]
+    return (clear or apart or places)[0]
 
 
 def zone_marks(zones: Iterable[Zone], width: int, height: int) -> tuple[ZoneMark, ...]:
@@ -196,9 +202,9 @@ def crop(finding: Finding, width: int, height: int) -> Crop:
     high = min(wide / _CROP_ASPECT, float(height))
     left = min(max((x0 + x1 - wide) / 2.0, 0.0), width - wide)
     top = min(max((y0 + y1 - high) / 2.0, 0.0), height - high)
-    label_x = min(max(100.0 * (x0 - left) / wide - 5.0, 6.0), 94.0)
-    label_y = min(max(100.0 * (y0 - top) / high - 6.0, 8.0), 92.0)
-    return Crop(left, top, wide, high, label_x, label_y)
+    box = (x0 - left, y0 - top, x1 - left, y1 - top)
+    label_x, label_y = _label_place(box, wide, high, _CROP_LABEL_SHARE * wide, ())
+    return Crop(left, top, wide, high, 100.0 * label_x / wide, 100.0 * label_y / high)
 
 
 def ticks(low_c: float, high_c: float, units: Units, *, wanted: int = 6) -> tuple[Tick, ...]:

@@ -51,9 +51,9 @@ class PictureView:
     width: int
     height: int
     pen: float
-    recorded: str
-    corrected: str
-    photo: str
+    recorded: Markup
+    corrected: Markup
+    photo: Markup
     """``data:`` addresses; the photograph's is empty where there is none."""
     marks: tuple[drawing.Mark, ...]
     zones: tuple[drawing.ZoneMark, ...]
@@ -183,7 +183,7 @@ def content_policy(style: str) -> str:
 
 def clean(value: object) -> object:
     """Replace characters that have no place in a page; markup of our own passes unchanged."""
-    if isinstance(value, str) and not isinstance(value, Markup):
+    if isinstance(value, str) and not isinstance(value, Markup) and not value.isprintable():
         return _UNSAFE.sub("\N{REPLACEMENT CHARACTER}", value)
     return value
 
@@ -249,16 +249,17 @@ def _ends(pictures: Pictures, units: Units) -> tuple[str, str]:
     return (low.plain if low else "", high.plain if high else "")
 
 
-def _photo_address(pictures: Pictures) -> str:
+def _photo_address(pictures: Pictures) -> Markup:
     if pictures.photo_jpeg:
         return _data_address("image/jpeg", pictures.photo_jpeg)
     if pictures.photo_png:
         return _data_address("image/png", pictures.photo_png)
-    return ""
+    return Markup()
 
 
-def _data_address(media_type: str, content: bytes) -> str:
-    return f"data:{media_type};base64,{base64.b64encode(content).decode()}"
+def _data_address(media_type: str, content: bytes) -> Markup:
+    """The bytes inline. Base 64 needs no escaping, and is long: it is marked as safe."""
+    return Markup(f"data:{media_type};base64,{base64.b64encode(content).decode()}")
 
 
 def _versions() -> tuple[tuple[str, str], ...]:

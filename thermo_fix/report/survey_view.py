@@ -140,13 +140,19 @@ class SurveyViews:
         settings = [job.detect for job in result.survey.images if job.file in done]
         if not settings:
             return words.count("outcome.none", len(done))
+        only = ""
+        if not any(s.cold for s in settings):
+            only = " " + words("outcome.only_hot")
+        elif not any(s.warm for s in settings):
+            only = " " + words("outcome.only_cold")
         delta = self._units.difference(min(s.min_delta_k for s in settings), sign=False)
-        return words.count(
+        sentence = words.count(
             "outcome.none_by",
             len(done),
             area=min(s.min_area_px for s in settings),
             delta=delta.plain if delta else "",
         )
+        return sentence + only
 
     def _criteria_texts(self) -> tuple[CriterionText, ...]:
         """The texts that were handed over, and for other criteria what the gradings quote."""

@@ -134,8 +134,8 @@ def _scene() -> str:
     return "".join(
         (
             "[scene]\n",
-            "# In force for all images; each key may also stand in an [[image]] or in an\n",
-            "# [[image.zone]], and wins there.\n",
+            "# In force for all images. Each key may also stand in an [[image]] or in a\n",
+            "# zone, and wins there.\n",
             _question(default("emissivity"), 'or { surface = "brick, red" }'),
             _question(default("reflected_c"), "degC; best measured on crumpled foil"),
             _question(default("air_c"), "degC; air between camera and surface"),
@@ -229,6 +229,5 @@ def _quoted(text: str) -> str:
 
 
 def _clean(text: str) -> str:
-    """Make a text fit for a comment or a title: one line, valid UTF-8."""
-    printable = "".join(one if one.isprintable() else " " for one in text)
-    return " ".join(printable.encode("utf-8", "replace").decode("utf-8").split())
+    """Make a text fit for a comment or a title: one line, and nothing that UTF-8 cannot hold."""
+    return " ".join("".join(one if one.isprintable() else " " for one in text).split())

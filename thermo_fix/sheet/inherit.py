@@ -13,6 +13,7 @@ from thermo_fix.defaults import Default, default_for
 from thermo_fix.radiometry.surroundings import REFLECTED_U_K
 from thermo_fix.records import Input, SceneInputs, SkyAndGround
 from thermo_fix.sheet.lines import KeyPath
+from thermo_fix.sheet.ranges import assumed_spread
 from thermo_fix.sheet.schema import Emissivity, Quantity, Reflected, SceneKeys, Window
 
 NOT_YET = math.nan
@@ -130,7 +131,8 @@ def completed(in_force: Stated) -> SceneInputs:
 def _given(key: str, value: float, u: float | None, scope: str) -> Input:
     if u is not None:
         return Input(key, value, u, "given", scope, "given")
-    return Input(key, value, default_for(key).u_for(value), "given", scope, "assumed", _U_ASSUMED)
+    assumed = assumed_spread(key, value, default_for(key).u_for(value))
+    return Input(key, value, assumed, "given", scope, "assumed", _U_ASSUMED)
 
 
 def _default(key: str) -> Input:

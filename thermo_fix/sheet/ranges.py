@@ -48,6 +48,11 @@ def spread_problem(key: str, value: float | None, u: float) -> str | None:
     return None
 
 
+def assumed_spread(key: str, value: float, u: float) -> float:
+    """Limit an assumed standard uncertainty to what could also be stated: at most the value."""
+    return min(u, abs(value)) if key in _NOT_ABOVE_VALUE and value else u
+
+
 def plausibility_note(key: str, value: float) -> str | None:
     """Say that a temperature of air, though possible, looks like kelvins."""
     if key in ("air_c", "indoor_c", "outdoor_c") and not -90.0 <= value <= 200.0:
