@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from thermo_fix import cautions
 from thermo_fix.constants import ZERO_CELSIUS_K
 from thermo_fix.correct import correct_frame, radiation_models
-from thermo_fix.criteria import Criterion, built_in, load_criteria, parse_criteria
+from thermo_fix.criteria import DEFAULT_USE, Criterion, built_in, load_criteria, parse_criteria
 from thermo_fix.errors import FolderError, SheetError, ThermoFixError
 from thermo_fix.find import find_regions
 from thermo_fix.grade import conditions, grade_finding
@@ -41,6 +41,8 @@ from thermo_fix.sheet import check_polygon, label_zones, load_survey, overlap_no
 
 RESULTS_NAME = "results"
 """Name of the results folder inside the survey folder, where no other is given."""
+
+_WHAT = {"building": "building", "electrical": "electrical installation"}
 
 Progress = Callable[[int, int, str], None]
 """Called with the number of images done, the number of all, and the file just done."""
@@ -81,7 +83,12 @@ def open_survey(folder: Path) -> Survey:
         what = "is no folder" if folder.exists() else "does not exist"
         raise FolderError(f"{folder}: {what}; give the folder that holds the images")
     found = [path.as_posix() for path in list_images(folder)]
-    return load_survey(folder, found_files=found, known_criteria=_known_criteria)
+    survey = load_survey(folder, found_files=found, known_criteria=_known_criteria)
+    if survey.criteria:
+        return survey
+    names = DEFAULT_USE[survey.purpose]
+    note = f"The sheet names no criteria; those for a survey of a {_WHAT[survey.purpose]} are used."
+    return replace(survey, criteria=names, notes=(*survey.notes, note))
 
 
 def run_survey(
