@@ -358,6 +358,33 @@ class Grading:
 
 
 @dataclass(frozen=True, slots=True)
+class Figure:
+    """One number of an assessment, with its uncertainty."""
+
+    label: str
+    value: float | None
+    u: float | None
+    """Standard uncertainty (k = 1), same unit; None where not known."""
+    unit: str
+    note: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Assessment:
+    """What a trade concludes from a finding or an image beyond its grade: load, heat flow, ..."""
+
+    kind: str
+    """``load``, ``wind``, ``phases``, ``limit``, ``moisture``, ``heat flow``, ``pattern``."""
+    title: str
+    statement: str
+    """The conclusion, one or two plain sentences."""
+    figures: tuple[Figure, ...] = ()
+    """The evidence in numbers."""
+    cautions: tuple[str, ...] = ()
+    source: str = ""
+
+
+@dataclass(frozen=True, slots=True)
 class Finding:
     """One anomalous region, hot or cold."""
 
@@ -404,6 +431,7 @@ class Finding:
     """How the uncertainty was obtained: ``first order`` or ``Monte Carlo``."""
     interval_c: tuple[float, float] | None = None
     """95 % interval of the extreme temperature, degC."""
+    assessments: tuple[Assessment, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -475,6 +503,8 @@ class ImageResult:
     cautions: tuple[str, ...] = ()
     findings: tuple[Finding, ...] = ()
     zones: tuple[Zone, ...] = ()
+    assessments: tuple[Assessment, ...] = ()
+    """Of groups of zones, or of the image as a whole."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,5 +1,7 @@
 """Findings in words and rounded numbers."""
 
+from typing import Final
+
 from thermo_fix.records import GRADES, Finding, SurveyResult
 from thermo_fix.report.budget_view import budget_views
 from thermo_fix.report.catalogue import Words
@@ -14,6 +16,12 @@ from thermo_fix.report.formatting import (
 )
 from thermo_fix.report.grading_view import grading_views
 from thermo_fix.report.view import FindingView, GradeKey, GradingView
+
+
+_SMALL_AREA_M2: Final = 0.1
+"""Areas below are printed in square centimetres."""
+
+_CM2_PER_M2: Final = 1e4
 
 
 class FindingViews:
@@ -75,7 +83,7 @@ class FindingViews:
             ungraded_why="" if finding.grade else self._why(gradings),
             gradings=gradings,
             settle=finding.settle or (quote.settle if quote else ""),
-            step=words.of(f"step.{self._purpose}", grade),
+            step=words.of("step", f"{self._purpose}.{grade}"),
             cautions=finding.cautions,
             budgets=budget_views(finding, words, units),
             method=words.of("method_name", finding.method),
@@ -142,11 +150,10 @@ class FindingViews:
         pixels = words.count("finding.area_px", finding.area_px)
         if finding.area_m2 is None or not known(finding.area_m2):
             return pixels
+        factor, unit = (1.0, "m²") if finding.area_m2 >= _SMALL_AREA_M2 else (_CM2_PER_M2, "cm²")
         u = finding.u_area_m2
-        decimals = 2 if finding.area_m2 >= 0.1 else 4
-        size = measured(
-            finding.area_m2, None if u is None else COVERAGE * u, "m²", decimals=decimals
-        )
+        spread = None if u is None else COVERAGE * u * factor
+        size = measured(finding.area_m2 * factor, spread, unit, decimals=2)
         return words("finding.area", pixels=pixels, area=size.text)
 
     def _band_model(self, finding: Finding) -> str:
