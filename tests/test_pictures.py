@@ -6,7 +6,6 @@ from dataclasses import replace
 from pathlib import Path
 
 import cv2
-import make_fake_result as fake
 import matplotlib
 import numpy as np
 import pytest
@@ -15,6 +14,7 @@ from hypothesis import strategies as st
 from hypothesis.extra.numpy import arrays
 from numpy.typing import NDArray
 
+from tests import make_fake_result as fake
 from thermo_fix.records import ImageResult, Planes
 from thermo_fix.report import COLOUR_MAPS, decode_data, encode_photo, encode_pictures
 from thermo_fix.report.pictures import colour_stops, encode_data, shared_span

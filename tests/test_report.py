@@ -7,14 +7,15 @@ import re
 from collections.abc import Callable
 from dataclasses import replace
 from datetime import date, datetime
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
 import html5lib
-import make_fake_result as fake
 import pytest
 
 import thermo_fix.report
+from tests import make_fake_result as fake
 from thermo_fix import cautions
 from thermo_fix.records import Finding, ImageResult, Planes, SurveyResult
 from thermo_fix.report import CriterionText, write_report
@@ -107,7 +108,7 @@ def test_headings_descend_one_step_at_a_time(page: str) -> None:
         if re.fullmatch(r"h[1-6]", local(element.tag))
     ]
     assert levels[0] == 1
-    assert all(after <= before + 1 for before, after in zip(levels, levels[1:], strict=False))
+    assert all(after <= before + 1 for before, after in pairwise(levels))
 
 
 def test_nothing_comes_from_outside_and_nothing_runs(page: str) -> None:

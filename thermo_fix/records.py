@@ -355,6 +355,9 @@ class Grading:
     settle: str = ""
     """The one thing to measure better that would lower the doubt most."""
     note: str = ""
+    scenario: str = ""
+    """Empty: as measured. Else under which other conditions, such as ``full load``; such a
+    grading does not head the finding."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -460,6 +463,8 @@ class MeasuredRegion:
     """Whether the surface is on the warm side of the envelope; None where it was not told."""
     variables: Mapping[str, VariableWords]
     """By variable name."""
+    scenarios: Mapping[str, Mapping[str, Estimate]] = field(default_factory=dict)
+    """Quantities under other conditions, by the scenario's name: ``full load``."""
 
 
 @dataclass(frozen=True, slots=True)

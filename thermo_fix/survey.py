@@ -17,7 +17,7 @@ from thermo_fix.criteria import DEFAULT_USE, Criterion, built_in, load_criteria,
 from thermo_fix.errors import FolderError, SheetError, ThermoFixError
 from thermo_fix.find import find_regions
 from thermo_fix.grade import conditions, grade_finding
-from thermo_fix.measure import measure_image, measure_regions
+from thermo_fix.measure import assess_image, measure_image, measure_regions
 from thermo_fix.read import list_images, read_frame, reading_k
 from thermo_fix.read.response import read_response
 from thermo_fix.records import (
@@ -196,11 +196,15 @@ def process_image(task: ImageTask, store: "_PictureStore") -> ImageResult:
             *notes,
             f"{found.unlike} regions were left out: their zone's like zones show the same.",
         )
-    findings = tuple(
-        grade_finding(each, task.criteria, task.survey.criteria_settings)
-        for each in measure_regions(corrected, found.regions, camera, str(task.number))
+    purpose = task.survey.purpose
+    measured = measure_regions(corrected, found.regions, camera, str(task.number), purpose)
+    settings = task.survey.criteria_settings
+    result = replace(
+        measure_image(corrected, notes),
+        findings=tuple(grade_finding(each, task.criteria, settings) for each in measured),
+        assessments=assess_image(corrected, measured, purpose),
+        photo=job.photo,
     )
-    result = replace(measure_image(corrected, notes), findings=tuple(findings), photo=job.photo)
     planes = Planes(
         recorded_c=corrected.reading_k - np.float32(ZERO_CELSIUS_K),
         corrected_c=corrected.surface_k - np.float32(ZERO_CELSIUS_K),

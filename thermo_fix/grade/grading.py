@@ -59,12 +59,18 @@ def grade_finding(
         With all gradings; its own grade is the worst of their most probable ones.
 
     """
+    concerned = [criterion for criterion in criteria if _concerns(criterion, measured)]
     gradings = tuple(
-        _grading(measured, criterion, settings)
-        for criterion in criteria
-        if _concerns(criterion, measured)
+        _grading(measured, criterion, settings, measured.quantities) for criterion in concerned
+    )
+    others = tuple(
+        replace(_grading(measured, criterion, settings, quantities), scenario=scenario)
+        for scenario, quantities in measured.scenarios.items()
+        for criterion in concerned
+        if criterion.quantity in quantities
     )
     graded = [each for each in gradings if each.grade is not None]
+    gradings += others
     if not graded:
         return replace(measured.finding, gradings=gradings)
     head = max(
@@ -99,12 +105,16 @@ def _concerns(criterion: Criterion, measured: MeasuredRegion) -> bool:
 
 
 def _grading(
-    measured: MeasuredRegion, criterion: Criterion, settings: Mapping[str, float]
+    measured: MeasuredRegion,
+    criterion: Criterion,
+    settings: Mapping[str, float],
+    quantities: Mapping[str, Estimate],
 ) -> Grading:
     values, unset = criterion.values_of_settings(settings)
-    estimate = measured.quantities.get(criterion.quantity)
+    estimate = quantities.get(criterion.quantity)
     lacking = [f"criteria.settings.{name}" for name in unset]
-    lacking += measured.missing.get(criterion.quantity, ())
+    if estimate is None:
+        lacking += measured.missing.get(criterion.quantity, ())
     if criterion.side == "inside" and measured.inside is None:
         lacking += [key for key in ("air_c", "indoor_c", "outdoor_c") if key not in lacking]
     words = _QUANTITY_WORDS[criterion.quantity]

@@ -9,6 +9,7 @@ import numpy as np
 
 from thermo_fix import cautions
 from thermo_fix.constants import ZERO_CELSIUS_K
+from thermo_fix.measure import building, electrical
 from thermo_fix.measure.quantities import Site, quantities_of
 from thermo_fix.measure.spot import (
     Spot,
@@ -17,6 +18,7 @@ from thermo_fix.measure.spot import (
     temperature_of,
     variable_name,
 )
+from thermo_fix.measure.trade import Measured
 from thermo_fix.measure.words import camera_words, input_words, place_words, where_words
 from thermo_fix.radiometry.path import seen_map
 from thermo_fix.radiometry.surface import (
@@ -25,12 +27,14 @@ from thermo_fix.radiometry.surface import (
     pixel_footprint_m2,
 )
 from thermo_fix.records import (
+    Assessment,
     BudgetLine,
     Camera,
     CorrectedFrame,
     Finding,
     MaskArray,
     MeasuredRegion,
+    Purpose,
     Region,
     VariableWords,
 )
@@ -44,8 +48,15 @@ _LOW_EMISSIVITY = 0.6
 _NEAR_REFLECTED_K = 2.0
 
 
+_TRADES = {"electrical": electrical, "building": building}
+
+
 def measure_regions(
-    corrected: CorrectedFrame, regions: Sequence[Region], camera: Camera, prefix: str
+    corrected: CorrectedFrame,
+    regions: Sequence[Region],
+    camera: Camera,
+    prefix: str,
+    purpose: Purpose,
 ) -> tuple[MeasuredRegion, ...]:
     """Measure the regions of one image.
 
@@ -59,6 +70,8 @@ def measure_regions(
         For the footprint.
     prefix
         Of the findings' ids: ``7`` makes ``7.1``, ``7.2``.
+    purpose
+        Which trade adds its assessments.
 
     Returns
     -------
@@ -67,13 +80,20 @@ def measure_regions(
 
     """
     return tuple(
-        _measure(corrected, region, camera, f"{prefix}.{number}")
+        _measure(corrected, region, camera, f"{prefix}.{number}", purpose)
         for number, region in enumerate(regions, 1)
     )
 
 
+def assess_image(
+    corrected: CorrectedFrame, regions: Sequence[MeasuredRegion], purpose: Purpose
+) -> tuple[Assessment, ...]:
+    """Return what the trade says of an image as a whole, or of groups of its zones."""
+    return _TRADES[purpose].image_assessments(corrected, regions)
+
+
 def _measure(
-    corrected: CorrectedFrame, region: Region, camera: Camera, identity: str
+    corrected: CorrectedFrame, region: Region, camera: Camera, identity: str, purpose: Purpose
 ) -> MeasuredRegion:
     job = corrected.job
     equation = corrected.equations[region.label]
@@ -133,11 +153,28 @@ def _measure(
         method="first order" if extreme.is_linear else "Monte Carlo",
         interval_c=extreme.interval(),
     )
-    finding = replace(
-        finding,
-        cautions=_cautions(corrected, region, finding, extreme, difference),
+    extras = _TRADES[purpose].finding_extras(
+        Measured(
+            corrected=corrected,
+            region=region,
+            finding=finding,
+            spot=spot,
+            reference_spot=reference_spot,
+            extreme=extreme,
+            reference=reference,
+            difference=difference,
+            where=where,
+        )
     )
-    return MeasuredRegion(finding, quantities, missing, site.inside, words)
+    own = _cautions(corrected, region, finding, extreme, difference)
+    return MeasuredRegion(
+        replace(finding, cautions=(*own, *extras.cautions), assessments=extras.assessments),
+        {**quantities, **extras.quantities},
+        {**missing, **extras.missing},
+        site.inside,
+        {**extras.words, **words},
+        extras.scenarios,
+    )
 
 
 def _reference_spot(corrected: CorrectedFrame, region: Region, identity: str) -> Spot | None:

@@ -17,7 +17,6 @@ from thermo_fix.report.formatting import (
 from thermo_fix.report.grading_view import grading_views
 from thermo_fix.report.view import FindingView, GradeKey, GradingView
 
-
 _SMALL_AREA_M2: Final = 0.1
 """Areas below are printed in square centimetres."""
 
