@@ -18,8 +18,10 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+from scipy import constants
 
-from thermo_fix.records import Finding, SurveyResult
+from thermo_fix.records import Finding, ImageResult, SurveyResult
+from thermo_fix.sheet import zone_mask
 from thermo_fix.survey import run_survey
 
 NEAR_PX = 4
@@ -128,8 +130,24 @@ def score_image(findings: Sequence[Finding], planted: Sequence[dict[str, Any]]) 
     )
 
 
+def true_median_c(image: ImageResult, truth: dict[str, Any], folder: Path) -> float:
+    """True median of the pixels that the program takes the median of.
+
+    Where the truth is known pixel by pixel, zones to be ignored are left out of it as well.
+    """
+    planes = folder / truth["file"].replace("IR_", "truth_").replace(".tif", ".npz")
+    if not planes.exists():
+        return float(truth["true_median_c"])
+    with np.load(planes) as stored:
+        true_c = stored["centikelvin"] / 100.0 - constants.zero_Celsius
+    left_out = [zone_mask(zone.polygon, true_c.shape) for zone in image.zones if zone.ignore]
+    kept = ~np.logical_or.reduce([np.zeros(true_c.shape, bool), *left_out])
+    return float(np.median(true_c[kept]))
+
+
 def score_result(result: SurveyResult, truths: Sequence[dict[str, Any]]) -> Score:
     """Score a run; images that the truth does not know (broken on purpose) are left out."""
+    folder = result.survey.folder
     by_file = {image.file: image for image in result.images}
     scores = []
     for truth in truths:
@@ -139,7 +157,9 @@ def score_result(result: SurveyResult, truths: Sequence[dict[str, Any]]) -> Scor
             key: tuple(f"{image.file}: {name}" for name in getattr(score, key))
             for key in ("missed_names", "false_names")
         }
-        median = () if image.median_c is None else (image.median_c - truth["true_median_c"],)
+        median: tuple[float, ...] = ()
+        if image.median_c is not None:
+            median = (image.median_c - true_median_c(image, truth, folder),)
         failed = (image.file,) if image.status == "failed" else ()
         scores.append(
             Score(

@@ -7,6 +7,7 @@ import re
 from collections.abc import Callable
 from dataclasses import replace
 from datetime import date, datetime
+from functools import lru_cache
 from itertools import pairwise
 from pathlib import Path
 from typing import Any
@@ -17,7 +18,7 @@ import pytest
 import thermo_fix.report
 from tests import make_fake_result as fake
 from thermo_fix import cautions
-from thermo_fix.records import Finding, ImageResult, Planes, SurveyResult
+from thermo_fix.records import DetectSettings, Finding, ImageResult, Planes, SurveyResult
 from thermo_fix.report import CriterionText, write_report
 from thermo_fix.report.catalogue import Words, load_words
 from thermo_fix.report.drawing import crop, marks, outline, shares, ticks
@@ -55,6 +56,7 @@ def finding_of(case: tuple[SurveyResult, dict[str, Planes]], identifier: str) ->
     return next(view for view in view_of(case).findings if view.id == identifier)
 
 
+@lru_cache(maxsize=2)
 def elements(page: str) -> list[Any]:
     """All elements of a page; a parse error of any kind fails the test."""
     parser = html5lib.HTMLParser(strict=True, namespaceHTMLElements=False)
@@ -159,8 +161,7 @@ def test_pictures_have_text_alternatives(page: str) -> None:
 def test_page_has_no_leftovers(page: str) -> None:
     text = re.sub(r"<style>.*?</style>", "", page, flags=re.DOTALL)
     text = re.sub(r"data:image/[^\"]*", "", text)
-    for leftover in ("None", "nan", "{{", "}}", "Undefined", "inf "):
-        assert leftover not in text
+    assert not re.search(r"\bNone\b(?! of)|\bnan\b|\binf\b|\{\{|\}\}|Undefined", text)
     assert not re.search(r"\{[a-z_]+\}", re.sub(r"<pre.*?</pre>", "", text, flags=re.DOTALL))
 
 
@@ -447,16 +448,28 @@ def test_assumed_inputs_are_announced() -> None:
 
 def test_nothing_found_is_said_with_its_limits(tmp_path: Path) -> None:
     case = fake.empty()
-    assert view_of(case).outcome == (
+    assert view_of(case).outcome[:2] == (
+        "No findings",
         "In the 4 images that were used, no region of 9 pixels or more differed from its "
-        "reference by 1.5\u00a0K or more."
+        "reference by 1.5\u00a0K or more.",
     )
     assert "does not mean that there is no defect" in page_of(case, tmp_path / "r.html")
 
 
+def test_a_search_for_one_sense_says_so() -> None:
+    result, _ = fake.empty()
+    jobs = tuple(replace(job, detect=DetectSettings(cold=False)) for job in result.survey.images)
+    survey = replace(result.survey, images=jobs)
+    assert (
+        "Only hot regions were looked for." in view_of((replace(result, survey=survey), {})).outcome
+    )
+
+
 def test_all_failed_is_no_clean_bill(tmp_path: Path) -> None:
     case = fake.all_failed()
-    assert "None of the 3 images could be used" in view_of(case).outcome
+    title, sentence = view_of(case).outcome
+    assert title == "Nothing was measured"
+    assert sentence.startswith("None of the 3 images could be used.")
     page = page_of(case, tmp_path / "r.html")
     for image in case[0].images:
         assert image.file in page

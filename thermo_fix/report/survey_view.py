@@ -128,23 +128,24 @@ class SurveyViews:
             sentences.append(words("assumed.which", list="; ".join(parts)))
         return tuple(sentences)
 
-    def _outcome(self) -> str:
+    def _outcome(self) -> tuple[str, ...]:
         result, words = self._result, self._words
         if not result.images:
-            return words("outcome.empty")
+            return words("outcome.not_measured"), words("outcome.empty")
         if len(result.failed) == len(result.images):
-            return words.count("outcome.all_failed", len(result.failed))
+            failed = words.count("outcome.all_failed", len(result.failed))
+            return words("outcome.not_measured"), failed
         if result.findings:
-            return ""
+            return ()
+        return (words("outcome.no_findings"), *self._searched(), words("outcome.meaning"))
+
+    def _searched(self) -> tuple[str, ...]:
+        """What was looked for in vain, by the settings of the images that were used."""
+        result, words = self._result, self._words
         done = {image.file for image in result.images if image.status == "done"}
         settings = [job.detect for job in result.survey.images if job.file in done]
         if not settings:
-            return words.count("outcome.none", len(done))
-        only = ""
-        if not any(s.cold for s in settings):
-            only = " " + words("outcome.only_hot")
-        elif not any(s.warm for s in settings):
-            only = " " + words("outcome.only_cold")
+            return (words.count("outcome.none", len(done)),)
         delta = self._units.difference(min(s.min_delta_k for s in settings), sign=False)
         sentence = words.count(
             "outcome.none_by",
@@ -152,7 +153,11 @@ class SurveyViews:
             area=min(s.min_area_px for s in settings),
             delta=delta.plain if delta else "",
         )
-        return sentence + only
+        if not any(s.cold for s in settings):
+            return sentence, words("outcome.only_hot")
+        if not any(s.warm for s in settings):
+            return sentence, words("outcome.only_cold")
+        return (sentence,)
 
     def _criteria_texts(self) -> tuple[CriterionText, ...]:
         """The texts that were handed over, and for other criteria what the gradings quote."""

@@ -198,8 +198,9 @@ class ReportView:
     cards: tuple[FindingView, ...]
     more: str
     """What the cards leave out, in words."""
-    outcome: str
-    """What it means that there is nothing to show, in words; empty where there is something."""
+    outcome: tuple[str, ...]
+    """Why there is no finding to show and what that means: a heading and sentences. Empty where
+    there are findings."""
     failed: tuple[ImageView, ...]
     findings: tuple[FindingView, ...]
     conditions: tuple[Condition, ...]
