@@ -42,10 +42,11 @@ def test_what_was_planted_is_found_and_nothing_else(
 ) -> None:
     score = scored(results, name)
     print(f"\n{name}: {score.found}/{score.planted} found, {score.false} false")
-    assert score.planted >= 5
+    assert score.planted == {"building": 10, "electrical": 4}[name]
     assert score.missed_names == ()
     assert score.false_names == ()
-    assert score.area_share >= 0.8, score.area_ratios
+    # The loose lug's warmth reaches into the conductor's zone, which makes two findings of it.
+    assert score.area_share >= {"building": 0.8, "electrical": 0.75}[name], score.area_ratios
 
 
 @pytest.mark.parametrize("name", ["building", "electrical"])
@@ -72,8 +73,16 @@ def findings_of(results: dict[str, SurveyResult], name: str, file: str) -> tuple
 def test_sound_images_have_no_finding(results: dict[str, SurveyResult]) -> None:
     for name, truths in TRUTH.items():
         for truth in truths:
-            if not truth["planted"]:
+            if truth.get("planted") == [] and not truth.get("explained"):
                 assert findings_of(results, name, truth["file"]) == (), truth["file"]
+
+
+def test_a_warmth_that_the_current_explains_is_one_finding_of_its_zone(
+    results: dict[str, SurveyResult],
+) -> None:
+    (truth,) = [each for each in TRUTH["electrical"] if each.get("explained")]
+    found = findings_of(results, "electrical", truth["file"])
+    assert [finding.zone for finding in found] == [each["zone"] for each in truth["explained"]]
 
 
 def test_every_finding_is_graded_and_says_its_uncertainty(

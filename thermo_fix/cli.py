@@ -16,6 +16,7 @@ from thermo_fix.version import __version__
 
 if TYPE_CHECKING:
     from thermo_fix.sheet import FileFacts
+    from thermo_fix.survey import RunOptions
 
 # Imaging and plotting libraries are imported inside the commands that need them, so that --help
 # and point answer at once.
@@ -62,13 +63,43 @@ def run(
         typer.Option(help="Results folder; FOLDER/results if not given. Replaced as a whole."),
     ] = None,
     quiet: Annotated[bool, typer.Option("--quiet", "-q", help="Print problems only.")] = False,
+    jobs: Annotated[
+        int | None,
+        typer.Option(min=1, help="Worker processes; one for each core if not given."),
+    ] = None,
+    cluster: Annotated[
+        str | None,
+        typer.Option(help="Address of a Dask scheduler, to use its workers instead."),
+    ] = None,
+    fresh: Annotated[
+        bool,
+        typer.Option("--fresh", help="Compute every image again, also those that did not change."),
+    ] = False,
+    no_planes: Annotated[
+        bool, typer.Option("--no-planes", help="Leave out corrected/ and uncertainty/.")
+    ] = False,
+    no_pictures: Annotated[
+        bool, typer.Option("--no-pictures", help="Leave the pictures out of the report.")
+    ] = False,
 ) -> None:
     """Do the whole job: correct, find, grade, and write the report.
+
+    Images that did not change since the last run are taken over from it, and an interrupted run
+    is carried on.
 
     Exit status: 0 all done; 1 some images failed (named on standard error); 2 the survey could
     not be run and nothing was written.
     """
-    raise typer.Exit(_run(folder, out, quiet))
+    from thermo_fix.survey import RunOptions
+
+    options = RunOptions(
+        jobs=jobs,
+        cluster=cluster,
+        fresh=fresh,
+        planes=not no_planes,
+        pictures=not no_pictures,
+    )
+    raise typer.Exit(_run(folder, out, quiet, options))
 
 
 @app.command()
@@ -209,6 +240,7 @@ def demo(
 ) -> None:
     """Copy two invented demo surveys, building and electrical, and run both."""
     from thermo_fix.demo import demo_surveys
+    from thermo_fix.survey import RunOptions
 
     status = EXIT_DONE
     if folder.exists() and (not folder.is_dir() or any(folder.iterdir())):
@@ -217,7 +249,7 @@ def demo(
         target = folder / name
         shutil.copytree(source, target)
         # The demo has a broken file on purpose, so that a failed image can be seen.
-        outcome = _run(target, None, quiet=False)
+        outcome = _run(target, None, False, RunOptions())
         status = max(status, EXIT_DONE if outcome == EXIT_SOME_FAILED else outcome)
     raise typer.Exit(status)
 
@@ -237,7 +269,7 @@ def main() -> NoReturn:
         _problem("stopped")
         sys.exit(EXIT_NOT_RUN)
     except KeyboardInterrupt:
-        _problem("stopped; nothing was written")
+        _problem("stopped; finished images are kept, and the same command carries on")
         sys.exit(EXIT_NOT_RUN)
     except BrokenPipeError:
         # The reader of our output has gone, as after "| head": nothing to say to anybody.
@@ -252,12 +284,12 @@ def main() -> NoReturn:
         sys.exit(EXIT_NOT_RUN)
 
 
-def _run(folder: Path, out: Path | None, quiet: bool) -> int:
+def _run(folder: Path, out: Path | None, quiet: bool, options: "RunOptions") -> int:
     from thermo_fix.survey import RESULTS_NAME, run_survey
 
     target = folder / RESULTS_NAME if out is None else out
     if quiet or not sys.stderr.isatty():
-        result = run_survey(folder, out)
+        result = run_survey(folder, out, options=options)
     else:
         from rich.console import Console
         from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn
@@ -269,6 +301,7 @@ def _run(folder: Path, out: Path | None, quiet: bool) -> int:
             result = run_survey(
                 folder,
                 out,
+                options=options,
                 progress=lambda done, total, _: bar.update(task, completed=done, total=total),
             )
     for image in result.failed:

@@ -84,6 +84,26 @@ class SkyAndGround:
 
 
 @dataclass(frozen=True, slots=True)
+class Limit:
+    """A temperature, or a rise over the air, that a part may not exceed."""
+
+    name: str
+    of: str
+    """What it is for: ``conductor``, ``winding``."""
+    source: str
+    obtained: Literal["found", "from memory"]
+    temperature_c: float | None = None
+    rise_k: float | None = None
+    """Over the air or other coolant; exactly one of the two is given."""
+    aliases: tuple[str, ...] = ()
+
+    @property
+    def names(self) -> tuple[str, ...]:
+        """The name and its aliases."""
+        return (self.name, *self.aliases)
+
+
+@dataclass(frozen=True, slots=True)
 class SceneInputs:
     """All inputs in force for one zone (or for the rest of an image)."""
 
@@ -98,6 +118,13 @@ class SceneInputs:
     sky: SkyAndGround | None = None
     surface: str | None = None
     """Name in the surface table, when the emissivity came from there."""
+    outdoors: bool | None = None
+    """Whether the part stands in the open; None where it was not told."""
+    limit: Limit | None = None
+    target_load_a: float | None = None
+    """Load to which a rise is to be brought, besides the rated one, A."""
+    design_air_c: float | None = None
+    """Air for which the installation is designed, degC."""
 
     def value(self, key: str) -> float | None:
         """Value of an input, or None where it was not told."""
@@ -119,6 +146,8 @@ class Zone:
     ignore: bool = False
     role: str | None = None
     """``foil`` or ``tape``: a reference patch."""
+    load_u_a: float | None = None
+    """Standard uncertainty (k = 1) of ``load_a``, A; None where the default is to be taken."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -448,6 +477,8 @@ class VariableWords:
     value: float | None
     u: float
     unit: str
+    rectangular: bool = False
+    """Whether the variable's distribution is rectangular instead of normal."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -465,6 +496,9 @@ class MeasuredRegion:
     """By variable name."""
     scenarios: Mapping[str, Mapping[str, Estimate]] = field(default_factory=dict)
     """Quantities under other conditions, by the scenario's name: ``full load``."""
+    settings: Mapping[str, float] = field(default_factory=dict)
+    """Settings of criteria that hold for this finding and win over those of the survey, such as
+    the limit of its zone."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,68 +1,63 @@
-"""The run: read -> correct -> find -> measure -> grade -> report, and nothing else."""
+"""The run: the work for every image, then the report and the results, and nothing else."""
 
 import hashlib
-import pickle
 from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass, replace
 from datetime import UTC, datetime
 from pathlib import Path
 
-import numpy as np
-from numpy.typing import NDArray
-
 from thermo_fix import cautions
-from thermo_fix.constants import ZERO_CELSIUS_K
-from thermo_fix.correct import correct_frame, radiation_models
+from thermo_fix.cluster import cluster_executor
+from thermo_fix.correct import radiation_models
 from thermo_fix.criteria import DEFAULT_USE, Criterion, built_in, load_criteria, parse_criteria
-from thermo_fix.errors import FolderError, SheetError, ThermoFixError
-from thermo_fix.find import find_regions
-from thermo_fix.grade import conditions, grade_finding
-from thermo_fix.measure import assess_image, measure_image, measure_regions
-from thermo_fix.read import list_images, read_frame, reading_k
+from thermo_fix.errors import FolderError, SheetError
+from thermo_fix.grade import conditions
+from thermo_fix.pool import (
+    default_jobs,
+    map_in_process,
+    map_over_executor,
+    map_over_pool,
+    single_threads,
+)
+from thermo_fix.read import list_images
 from thermo_fix.read.response import read_response
-from thermo_fix.records import (
-    Camera,
-    CorrectedFrame,
-    ImageJob,
-    ImageResult,
-    Planes,
-    Survey,
-    SurveyResult,
-)
-from thermo_fix.report import (
-    CriterionText,
-    Pictures,
-    encode_photo,
-    encode_pictures,
-    write_report,
-)
-from thermo_fix.results import Staging, findings_document, write_document, write_plane, write_table
-from thermo_fix.sheet import check_polygon, label_zones, load_survey, overlap_notes
+from thermo_fix.records import ImageResult, Survey, SurveyResult
+from thermo_fix.report import CriterionText, Pictures, write_report
+from thermo_fix.report.archive import pictures_from_files
+from thermo_fix.results import Staging, findings_document, write_document, write_table
+from thermo_fix.results.kept import load_kept
+from thermo_fix.results.workshop import Workshop
+from thermo_fix.sheet import load_survey
+from thermo_fix.work import PLANE_NAMES, ImageTask, Outcome, plane_path, process_image
 
 RESULTS_NAME = "results"
 """Name of the results folder inside the survey folder, where no other is given."""
 
 _WHAT = {"building": "building", "electrical": "electrical installation"}
+_WORTH_A_POOL = 8
+"""Images from which starting worker processes pays."""
 
 Progress = Callable[[int, int, str], None]
 """Called with the number of images done, the number of all, and the file just done."""
 
 
 @dataclass(frozen=True, slots=True)
-class ImageTask:
-    """Everything that is needed to do one image, and nothing that cannot be pickled."""
+class RunOptions:
+    """How a survey is run; none of it changes a number."""
 
-    number: int
-    """From 1, in the order of the sheet; prefix of the findings' ids."""
-    job: ImageJob
-    survey: Survey
-    """Without its images."""
-    criteria: tuple[Criterion, ...]
-    response: tuple[tuple[float, float], ...] | None
-    plane_name: str
-    """Path of the written planes below ``corrected/`` and ``uncertainty/``."""
-    folder: Path
-    """Where the planes and pictures go."""
+    jobs: int | None = None
+    """Worker processes; by default one for each core, or none for a small survey."""
+    cluster: str | None = None
+    """Address of a Dask scheduler, instead of a pool of processes."""
+    fresh: bool = False
+    """Compute every image again, whatever an earlier run has left."""
+    planes: bool = True
+    """Write corrected and uncertainty planes."""
+    pictures: bool = True
+    """Put pictures into the report."""
+
+
+DEFAULT_OPTIONS = RunOptions()
 
 
 def open_survey(folder: Path) -> Survey:
@@ -92,7 +87,11 @@ def open_survey(folder: Path) -> Survey:
 
 
 def run_survey(
-    folder: Path | str, out: Path | str | None = None, *, progress: Progress | None = None
+    folder: Path | str,
+    out: Path | str | None = None,
+    *,
+    options: RunOptions = DEFAULT_OPTIONS,
+    progress: Progress | None = None,
 ) -> SurveyResult:
     """Do the whole job for a folder of radiometric images.
 
@@ -102,7 +101,9 @@ def run_survey(
         The survey folder, with or without a sheet.
     out
         Results folder; ``results`` inside the survey folder by default. Written as a whole and
-        only when complete.
+        only when complete; what an interrupted run has finished is taken up again.
+    options
+        How to run it.
     progress
         Called after each image.
 
@@ -126,17 +127,18 @@ def run_survey(
     radiation_models(survey.model, survey.camera, response)
     run_time = datetime.now(UTC).isoformat(timespec="seconds")
     sheet = None if survey.sheet is None else survey.sheet.read_bytes()
-    with Staging(target) as staging:
-        store = _PictureStore(staging.folder)
-        images = []
-        tasks = list(_tasks(survey, criteria, response, staging.folder))
-        for done, task in enumerate(tasks, 1):
-            images.append(process_image(task, store))
+    with Staging(target) as staging, Workshop(target, fresh=options.fresh) as workshop:
+        older = target if target.is_dir() and not options.fresh else None
+        tasks = _tasks(survey, criteria, response, workshop.folder, older, options)
+        total = len(survey.images)
+        outcomes: list[tuple[ImageTask, Outcome]] = []
+        for task, outcome in _outcomes(tasks, total, options):
+            outcomes.append((task, outcome))
             if progress is not None:
-                progress(done, len(tasks), task.job.file)
+                progress(len(outcomes), total, task.job.file)
         result = SurveyResult(
             survey=survey,
-            images=tuple(images),
+            images=tuple(outcome.result for _, outcome in outcomes),
             conditions=conditions(survey),
             cautions=cautions.general(survey.purpose),
         )
@@ -147,85 +149,18 @@ def run_survey(
         )
         write_document(staging.folder / "findings.json", document)
         write_table(staging.folder / "findings.csv", result)
+        keys = {task.job.file: outcome.key for task, outcome in outcomes if outcome.key}
         write_report(
             result,
-            store,
+            _KeptPictures(workshop.folder, keys if options.pictures else {}),
             staging.folder / "report.html",
             sheet_text=None if sheet is None else sheet.decode("utf-8-sig"),
             run_time=run_time,
             criteria=[criterion_text(each) for each in criteria],
         )
-        store.remove()
+        _collect(outcomes, workshop.folder, staging.folder, options)
         staging.finish()
-    return result
-
-
-def process_image(task: ImageTask, store: "_PictureStore") -> ImageResult:
-    """Do one image: everything between its file and its result.
-
-    Parameters
-    ----------
-    task
-        The image, its inputs and the criteria.
-    store
-        Where its pictures go.
-
-    Returns
-    -------
-    ImageResult
-        With status ``failed`` and one line where the image cannot be used.
-
-    """
-    job, camera = task.job, task.survey.camera
-    try:
-        corrected, notes = _corrected(task)
-    except ThermoFixError as error:
-        return ImageResult(
-            file=job.file,
-            status="failed",
-            error=str(error),
-            asset=job.asset,
-            note=job.note,
-            zones=job.zones,
-        )
-    found = find_regions(corrected)
-    if found.spikes:
-        notes = (*notes, f"{found.spikes} isolated pixels were bridged when looking for findings.")
-    if found.unlike:
-        notes = (
-            *notes,
-            f"{found.unlike} regions were left out: their zone's like zones show the same.",
-        )
-    purpose = task.survey.purpose
-    measured = measure_regions(corrected, found.regions, camera, str(task.number), purpose)
-    settings = task.survey.criteria_settings
-    result = replace(
-        measure_image(corrected, notes),
-        findings=tuple(grade_finding(each, task.criteria, settings) for each in measured),
-        assessments=assess_image(corrected, measured, purpose),
-        photo=job.photo,
-    )
-    planes = Planes(
-        recorded_c=corrected.reading_k - np.float32(ZERO_CELSIUS_K),
-        corrected_c=corrected.surface_k - np.float32(ZERO_CELSIUS_K),
-        uncertainty_k=corrected.uncertainty_k,
-    )
-    for name, plane in (
-        ("corrected", planes.corrected_c),
-        ("uncertainty", planes.uncertainty_k),
-    ):
-        path = task.folder / name / task.plane_name
-        path.parent.mkdir(parents=True, exist_ok=True)
-        write_plane(path, plane, carried_tags=corrected.frame.carried_tags)
-    pictures = encode_pictures(planes, result)
-    if job.photo is not None:
-        photo = encode_photo(job.photo)
-        if photo is None:
-            note = f"{job.photo.name}: the photograph cannot be read and is left out."
-            result = replace(result, notes=(*result.notes, note))
-        else:
-            pictures = replace(pictures, photo_jpeg=photo)
-    store.keep(job.file, pictures)
+        workshop.close()
     return result
 
 
@@ -240,61 +175,89 @@ def criterion_text(criterion: Criterion) -> CriterionText:
     )
 
 
-def _corrected(task: ImageTask) -> tuple[CorrectedFrame, tuple[str, ...]]:
-    job, camera = task.job, task.survey.camera
-    frame = read_frame(job.path, camera)
-    rows, columns = frame.shape
-    notes = list(frame.notes)
-    if frame.encoding.note:
-        notes.append(frame.encoding.note)
-    for zone in job.zones:
-        message = check_polygon(zone, columns, rows)
-        if message is not None:
-            notes.append(f"{job.file}: {message}")
-    notes += overlap_notes(job.zones, frame.shape)
-    corrected = correct_frame(
-        frame,
-        reading_k(frame),
-        job,
-        label_zones(job.zones, frame.shape),
-        camera,
-        radiation_models(task.survey.model, camera, task.response),
-        _planes(job),
+def _outcomes(
+    tasks: Iterator[ImageTask], total: int, options: RunOptions
+) -> Iterator[tuple[ImageTask, Outcome]]:
+    if options.cluster is not None:
+        with cluster_executor(options.cluster) as (executor, workers):
+            yield from map_over_executor(process_image, tasks, executor, 4 * workers, _lost)
+        return
+    jobs = options.jobs
+    if jobs is None:
+        jobs = default_jobs() if total >= _WORTH_A_POOL else 1
+    if jobs <= 1:
+        yield from map_in_process(process_image, tasks)
+        return
+    with single_threads():
+        yield from map_over_pool(process_image, tasks, min(jobs, total), _lost)
+
+
+def _lost(task: ImageTask) -> Outcome:
+    return Outcome(
+        ImageResult(
+            file=task.job.file,
+            status="failed",
+            error=f"{task.job.file}: its worker process ended before the image was done, twice; "
+            "run again, with --jobs 1 to see why",
+            asset=task.job.asset,
+            note=task.job.note,
+            zones=task.job.zones,
+        ),
+        None,
     )
-    return corrected, tuple(notes)
 
 
-def _planes(job: ImageJob) -> dict[Path, NDArray[np.float32]]:
-    """Read the emissivity and reflected-temperature planes that an image needs."""
-    planes = {}
-    # As numbers, whatever they mean: 'celsius' leaves values as they are.
-    plain = Camera(pixel="celsius")
-    for inputs in (job.inputs, *(zone.inputs for zone in job.zones)):
-        for path in (inputs.emissivity_file, inputs.reflected_file):
-            if path is not None and path not in planes:
-                planes[path] = read_frame(path, plain).values.astype(np.float32)
-    return planes
+def _collect(
+    outcomes: list[tuple[ImageTask, Outcome]], work: Path, target: Path, options: RunOptions
+) -> None:
+    """Move what was finished for each image into the results."""
+    kept = target / ".kept"
+    kept.mkdir()
+    for task, outcome in outcomes:
+        if outcome.key is None:
+            continue
+        (work / f"{outcome.key}.zip").rename(kept / f"{outcome.key}.zip")
+        if options.planes:
+            for name in PLANE_NAMES:
+                place = target / name / task.plane_name
+                place.parent.mkdir(parents=True, exist_ok=True)
+                plane_path(work, outcome.key, name).rename(place)
 
 
 def _tasks(
     survey: Survey,
     criteria: tuple[Criterion, ...],
     response: tuple[tuple[float, float], ...] | None,
-    folder: Path,
+    work: Path,
+    older: Path | None,
+    options: RunOptions,
 ) -> Iterator[ImageTask]:
     bare = replace(survey, images=())
     names = _plane_names([job.file for job in survey.images])
     for number, job in enumerate(survey.images, 1):
-        yield ImageTask(number, job, bare, criteria, response, names[job.file], folder)
+        yield ImageTask(
+            number=number,
+            job=job,
+            survey=bare,
+            criteria=criteria,
+            response=response,
+            work=work,
+            older=older,
+            plane_name=names[job.file],
+            planes=options.planes,
+            pictures=options.pictures,
+        )
 
 
 def _plane_names(files: list[str]) -> dict[str, str]:
     """Name the planes after their images; two images of one stem keep their endings."""
     stems = [str(Path(file).with_suffix("")) for file in files]
-    folded = [stem.casefold() for stem in stems]
+    counts: dict[str, int] = {}
+    for stem in stems:
+        counts[stem.casefold()] = counts.get(stem.casefold(), 0) + 1
     return {
-        file: f"{file if folded.count(name) > 1 else stem}.tif"
-        for file, stem, name in zip(files, stems, folded, strict=True)
+        file: f"{file if counts[stem.casefold()] > 1 else stem}.tif"
+        for file, stem in zip(files, stems, strict=True)
     }
 
 
@@ -311,34 +274,21 @@ def _known_criteria(file: Path | None) -> tuple[str, ...]:
     return tuple(names)
 
 
-class _PictureStore(Mapping[str, Pictures]):
-    """Pictures on disk, so that memory does not grow with the number of images."""
+class _KeptPictures(Mapping[str, Pictures]):
+    """Pictures of finished images, read when they are asked for."""
 
-    def __init__(self, folder: Path) -> None:
-        self._folder = folder / ".pictures"
-        self._folder.mkdir()
-
-    def keep(self, file: str, pictures: Pictures) -> None:
-        self._path(file).write_bytes(pickle.dumps(pictures))
-
-    def remove(self) -> None:
-        for path in self._folder.iterdir():
-            path.unlink()
-        self._folder.rmdir()
+    def __init__(self, work: Path, keys: Mapping[str, str]) -> None:
+        self._work = work
+        self._keys = keys
 
     def __getitem__(self, file: str) -> Pictures:
-        path = self._path(file)
-        if not path.exists():
+        kept = load_kept(self._work, self._keys[file])
+        if kept is None:
             raise KeyError(file)
-        pictures = pickle.loads(path.read_bytes())
-        assert isinstance(pictures, Pictures)  # written by keep
-        return pictures
+        return pictures_from_files(kept.files)
 
     def __iter__(self) -> Iterator[str]:
-        return iter(())
+        return iter(self._keys)
 
     def __len__(self) -> int:
-        return sum(1 for _ in self._folder.iterdir())
-
-    def _path(self, file: str) -> Path:
-        return self._folder / hashlib.sha256(file.encode()).hexdigest()
+        return len(self._keys)

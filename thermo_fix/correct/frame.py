@@ -1,6 +1,5 @@
 """Correct one image."""
 
-import math
 from collections.abc import Mapping
 from pathlib import Path
 
@@ -8,18 +7,17 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_fix import cautions
-from thermo_fix.constants import ZERO_CELSIUS_K
-from thermo_fix.correct.inputs import Models, equation_of, fill_sky, recorded_path, with_input
+from thermo_fix.correct.inputs import Models, equation_of, fill_sky, with_input
+from thermo_fix.correct.reference_zone import foil_temperature
 from thermo_fix.errors import ImageError
 from thermo_fix.radiometry.air import STRETCHED_BEYOND_M
-from thermo_fix.radiometry.path import correction_map, seen_map
+from thermo_fix.radiometry.path import correction_map
 from thermo_fix.radiometry.surface import STEEP_VIEW_DEG
 from thermo_fix.records import (
     Camera,
     CorrectedFrame,
     Frame,
     ImageJob,
-    Input,
     LabelArray,
     SceneInputs,
 )
@@ -27,9 +25,6 @@ from thermo_fix.uncertainty.equation import MeasurementEquation
 
 _UNCERTAINTY_NODES = 2048
 _LOW_EMISSIVITY = 0.6
-_FOIL_U_K = 0.5
-"""Standard uncertainty of a foil's mean as the reflected temperature, K: foil is no perfect
-mirror and mirrors another part of the surroundings than the target does; judged."""
 
 
 def correct_frame(
@@ -122,31 +117,9 @@ def _complete(
         return fill_sky(inputs)
     names = [zone.name for zone in job.zones]
     label = names.index(inputs.reflected_zone) + 1
-    readings = reading_k[labels == label].astype(np.float64)
-    readings = readings[np.isfinite(readings)]
-    if len(readings) < 9:
-        raise ImageError(
-            f"{job.file}: the foil zone {inputs.reflected_zone!r} has {len(readings)} usable "
-            "pixels, too few to measure the reflected temperature; draw it larger"
-        )
-    # Emissivity 1 and distance 0 (ASTM E1862, reflector method): what is seen is what is
-    # reflected. The mean is taken of exitance, because that is what mixes.
-    seen = seen_map(recorded_path(camera.recorded), models.model)
-    exitance = float(np.mean(seen(models.model.exitance(readings))))
-    mean_c = float(models.model.temperature(exitance)) - ZERO_CELSIUS_K
-    half_width = max(camera.accuracy_k, camera.accuracy_fraction * abs(mean_c))
-    return with_input(
-        inputs,
-        Input(
-            "reflected_c",
-            mean_c,
-            math.hypot(half_width / math.sqrt(3.0), _FOIL_U_K),
-            "measured",
-            f"zone {inputs.reflected_zone} of {job.file}",
-            "measured",
-            f"mean of {len(readings)} pixels of the foil zone {inputs.reflected_zone!r}",
-        ),
-    )
+    name = inputs.reflected_zone
+    foil = foil_temperature(reading_k, labels == label, name, job.file, camera, models.model)
+    return with_input(inputs, foil)
 
 
 def _planes_by_label(

@@ -12,6 +12,14 @@ _TUKEY = 4.685
 """Tuning constant of Tukey's biweight (95 % efficiency for normal noise; Huber and Ronchetti,
 Robust Statistics, 2nd ed., table 4.4 - from memory)."""
 _ROUNDS = 20
+_STARTS = 100
+"""Random starts of the trimmed fit: with 35 % of the pixels in a finding, one of six-point starts
+is clean with a chance of 99.96 %."""
+_START_SAMPLE = 800
+_KEPT = 0.55
+"""Share of the pixels that the trimmed fit follows."""
+_CONCENTRATIONS = 8
+_CLEARLY_TIGHTER = 0.7
 _LARGE_ZONE_PX = 4000
 _SMALL_ZONE_PX = 150
 _SMOOTHING_SHARE = 0.10
@@ -80,13 +88,64 @@ def _terms(x: NDArray[np.float64], y: NDArray[np.float64], count: int) -> NDArra
 def _robust_fit(
     terms: NDArray[np.float64], values: NDArray[np.float64], sigma_k: float
 ) -> NDArray[np.float64]:
-    """Iteratively reweighted least squares with Tukey's biweight, from the median."""
-    coefficients: NDArray[np.float64] = np.zeros(terms.shape[1])
-    coefficients[0] = np.median(values)
+    """Fit robustly, so that a finding of a third of the zone draws nothing towards itself.
+
+    From the median, a broad and weak finding is taken for curvature of the background; from a
+    trimmed fit it is not. The latter is used where it leaves the half of the pixels that fits
+    best clearly tighter.
+    """
+    level: NDArray[np.float64] = np.zeros(terms.shape[1])
+    level[0] = np.median(values)
+    plain = _reweighted(terms, values, sigma_k, level)
+    if terms.shape[1] == 1:
+        return plain
+    trimmed = _reweighted(terms, values, sigma_k, _trimmed_fit(terms, values))
+    spread = max(_spread(values - terms @ plain), sigma_k)
+    return trimmed if _spread(values - terms @ trimmed) < _CLEARLY_TIGHTER * spread else plain
+
+
+def _spread(residual: NDArray[np.float64]) -> float:
+    """Half of the pixels may belong to findings; the half that fits best tells the spread."""
+    return 1.4826 * float(np.median(np.abs(residual)))
+
+
+def _trimmed_fit(terms: NDArray[np.float64], values: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Least trimmed squares by concentration from random starts.
+
+    Rousseeuw and Van Driessen, Data Mining and Knowledge Discovery 12 (2006) 29. The random
+    numbers are the same in each run.
+    """
+    rng = np.random.default_rng(0)
+    sample = rng.permutation(len(values))[:_START_SAMPLE]
+    terms, values = terms[sample], values[sample]
+    count, width = terms.shape
+    products = (terms[:, :, None] * terms[:, None, :]).reshape(count, width * width)
+    sides = terms * values[:, None]
+    ridge = 1e-9 * count * np.eye(width)
+    chosen = np.argpartition(rng.random((_STARTS, count)), width, axis=1)[:, :width]
+    kept = round(_KEPT * count)
+    for _ in range(_CONCENTRATIONS):
+        weight = np.zeros((_STARTS, count))
+        np.put_along_axis(weight, chosen, 1.0, axis=1)
+        normal = (weight @ products).reshape(_STARTS, width, width) + ridge
+        coefficients = np.linalg.solve(normal, (weight @ sides)[:, :, None])[:, :, 0]
+        squares = np.square(values - coefficients @ terms.T)
+        chosen = np.argpartition(squares, kept, axis=1)[:, :kept]
+    cost = np.take_along_axis(squares, chosen, axis=1).sum(axis=1)
+    return np.asarray(coefficients[np.argmin(cost)], np.float64)
+
+
+def _reweighted(
+    terms: NDArray[np.float64],
+    values: NDArray[np.float64],
+    sigma_k: float,
+    start: NDArray[np.float64],
+) -> NDArray[np.float64]:
+    """Iteratively reweighted least squares with Tukey's biweight."""
+    coefficients = start
     for _ in range(_ROUNDS):
         residual = values - terms @ coefficients
-        # Half of the pixels may belong to findings; the half that fits best tells the spread.
-        spread = max(1.4826 * float(np.median(np.abs(residual))), sigma_k, 1e-3)
+        spread = max(_spread(residual), sigma_k, 1e-3)
         weight = np.square(np.clip(1.0 - np.square(residual / (_TUKEY * spread)), 0.0, None))
         weighted = terms * weight[:, None]
         normal = weighted.T @ terms + 1e-9 * len(values) * np.eye(terms.shape[1])

@@ -59,6 +59,7 @@ def grade_finding(
         With all gradings; its own grade is the worst of their most probable ones.
 
     """
+    settings = {**settings, **measured.settings}
     concerned = [criterion for criterion in criteria if _concerns(criterion, measured)]
     gradings = tuple(
         _grading(measured, criterion, settings, measured.quantities) for criterion in concerned
@@ -67,7 +68,8 @@ def grade_finding(
         replace(_grading(measured, criterion, settings, quantities), scenario=scenario)
         for scenario, quantities in measured.scenarios.items()
         for criterion in concerned
-        if criterion.quantity in quantities
+        # What a criterion lacks is said once, with the grading as measured.
+        if criterion.quantity in quantities and not criterion.values_of_settings(settings)[1]
     )
     graded = [each for each in gradings if each.grade is not None]
     gradings += others
@@ -211,7 +213,8 @@ def _settle(
     best_name, best_doubt = "", doubt
     for name in estimate.contributions:
         # Standardised draws of the variable, from the same stream as the estimate's own.
-        shape: Shape = "rectangular" if name in RECTANGULAR else "normal"
+        flat = name in RECTANGULAR or words[name].rectangular
+        shape: Shape = "rectangular" if flat else "normal"
         deviates = standard_deviates(name, len(estimate.draws), SEED, shape)
         halved = _chances(criterion, estimate.halved(name, deviates), settings)
         left = 1.0 - max(halved.values())

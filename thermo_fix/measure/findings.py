@@ -174,6 +174,7 @@ def _measure(
         site.inside,
         {**extras.words, **words},
         extras.scenarios,
+        extras.settings,
     )
 
 

@@ -42,3 +42,5 @@ class Extras:
     missing: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
     words: Mapping[str, VariableWords] = field(default_factory=dict)
     """For variables that only these estimates use."""
+    settings: Mapping[str, float] = field(default_factory=dict)
+    """Settings of criteria that hold for this finding alone."""

@@ -26,7 +26,7 @@ from thermo_fix.radiometry.path import (
     sensitivities,
     surface_temperature,
 )
-from thermo_fix.radiometry.surface import directional_factor
+from thermo_fix.radiometry.surface import DIELECTRIC_FROM, directional_factor
 from thermo_fix.uncertainty.variables import DRAWS, SEED, Variable, uniform_draws
 
 CALIBRATION = "camera calibration"
@@ -45,6 +45,7 @@ _WINDOW_KEYS = (
 )
 _SMALLEST_EMISSIVITY = 1e-3
 _ANGLE_STEP_DEG = 0.05
+_LEAST_EMISSIVITY_STEP = 1e-3
 
 
 @dataclass(frozen=True)
@@ -177,7 +178,24 @@ class MeasurementEquation:
         # Draws below zero are views from the other side.
         grid = np.linspace(0.0, 89.0, 357)
         curve = np.array([directional_factor(normal, step) for step in grid])
-        return np.asarray(np.interp(np.abs(values["view_angle_deg"]), grid, curve))
+        drawn = np.abs(values["view_angle_deg"])
+        factor = np.interp(drawn, grid, curve)
+        if "emissivity" in values:
+            # The index, and so the curve, follows the normal emissivity; linear over its spread.
+            u = self.variables["emissivity"].u
+            slope = np.array([_factor_slope(normal, u, step) for step in grid])
+            error = values["emissivity"] - normal
+            factor = np.clip(factor + np.interp(drawn, grid, slope) * error, 1e-3, 1.0)
+        return np.asarray(factor)
+
+    def _emissivity_gain(self) -> float:
+        """Return d(eps at the view angle)/d(normal eps)."""
+        angle = self.variables.get("view_angle_deg")
+        if angle is None or self.emissivity_is_plane:
+            return 1.0
+        given = self.variables["emissivity"]
+        slope = _factor_slope(given.value, given.u, angle.value)
+        return directional_factor(given.value, angle.value) + given.value * slope
 
     def _angle_slope(self) -> float:
         """Return d(eps)/d(view angle), 1/degree."""
@@ -253,13 +271,12 @@ class MeasurementEquation:
         surface_k = surface_temperature(reading_k, path, self.recorded, self.model)
         slopes = sensitivities(reading_k, surface_k, path, self.recorded, self.model)
         u = {key: variable.u for key, variable in self.variables.items()}
-        factor = self._angle_factor(None)
         half_width = self.calibration_half_width_k(reading_k)
         result: dict[str, Real] = {
             CALIBRATION: slopes["reading"] * half_width / math.sqrt(3.0),
             NOISE: slopes["reading"] * self.noise_k,
             NONUNIFORMITY: slopes["reading"] * self.nonuniformity_k,
-            "emissivity": slopes["emissivity"] * factor * u["emissivity"],
+            "emissivity": slopes["emissivity"] * self._emissivity_gain() * u["emissivity"],
             "reflected_c": slopes["reflected"] * u["reflected_c"],
         }
         if "view_angle_deg" in u:
@@ -366,6 +383,21 @@ class MeasurementEquation:
                 values["air_formula"] = formula.draw(draws, seed)
             self._cache[key] = self.path(values, emissivity, reflected_c)
         return self._cache[key]  # type: ignore[return-value]
+
+
+def _factor_slope(normal: float, u: float, angle_deg: float) -> float:
+    """Return the slope of the directional factor by the normal emissivity, over +/- u.
+
+    A secant over the standard uncertainty (JCGM 100:2008, 5.1.3 note 2), because near an
+    emissivity of 1 the factor falls steeply and the tangent says nothing.
+    """
+    if normal < DIELECTRIC_FROM:
+        return 0.0
+    # Both ends must belong to the same kind of surface, and to emissivities that exist.
+    step = max(u, _LEAST_EMISSIVITY_STEP)
+    low, high = max(normal - step, DIELECTRIC_FROM), min(normal + step, 1.0)
+    rise = directional_factor(high, angle_deg) - directional_factor(low, angle_deg)
+    return rise / (high - low)
 
 
 def _needed(plane: Real | None, what: str) -> Real:

@@ -1,0 +1,280 @@
+"""The work for one image: a pure function of small arguments that can be sent anywhere.
+
+It reads one file and leaves its finished work in a folder; what comes back is small. The same
+function serves one process, a pool of processes and a cluster.
+"""
+
+import contextlib
+import hashlib
+import json
+import os
+import shutil
+from dataclasses import dataclass, replace
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from thermo_fix.constants import ZERO_CELSIUS_K
+from thermo_fix.correct import correct_frame, radiation_models
+from thermo_fix.criteria import Criterion
+from thermo_fix.errors import ThermoFixError
+from thermo_fix.find import find_regions
+from thermo_fix.grade import grade_finding
+from thermo_fix.measure import assess_image, measure_image, measure_regions
+from thermo_fix.read import read_frame, reading_k
+from thermo_fix.records import (
+    Camera,
+    CorrectedFrame,
+    ImageJob,
+    ImageResult,
+    Planes,
+    Survey,
+)
+from thermo_fix.report import encode_photo, encode_pictures
+from thermo_fix.report.archive import pictures_to_files
+from thermo_fix.results import write_plane
+from thermo_fix.results.kept import KeptImage, canonical, keep_image, key_of, load_kept
+from thermo_fix.sheet import check_polygon, label_zones, overlap_notes
+from thermo_fix.version import __version__
+
+PLANE_NAMES = ("corrected", "uncertainty")
+_PLANES_INDEX = "planes.json"
+
+
+@dataclass(frozen=True, slots=True)
+class ImageTask:
+    """Everything that is needed to do one image, and nothing that cannot be pickled."""
+
+    number: int
+    """From 1, in the order of the sheet; prefix of the findings' ids."""
+    job: ImageJob
+    survey: Survey
+    """Without its images."""
+    criteria: tuple[Criterion, ...]
+    response: tuple[tuple[float, float], ...] | None
+    work: Path
+    """Folder for finished images."""
+    older: Path | None
+    """Folder of an earlier result, to take over what has not changed."""
+    plane_name: str
+    """Name of the planes in the results."""
+    planes: bool = True
+    """Whether corrected and uncertainty planes are wanted."""
+    pictures: bool = True
+    """Whether pictures are wanted."""
+
+
+@dataclass(frozen=True, slots=True)
+class Outcome:
+    """What comes back of an image."""
+
+    result: ImageResult
+    key: str | None
+    """Of its finished work; None for a failed image."""
+    taken_over: bool = False
+    """Whether nothing had to be computed."""
+
+
+def process_image(task: ImageTask) -> Outcome:
+    """Do one image: everything between its file and its result.
+
+    Parameters
+    ----------
+    task
+        The image, its inputs and the criteria.
+
+    Returns
+    -------
+    Outcome
+        With status ``failed`` and one line where the image cannot be used.
+
+    """
+    job = task.job
+    try:
+        key = _key(task)
+        found = _taken_over(task, key)
+        if found is not None:
+            return Outcome(replace(found.result, photo=job.photo, zones=job.zones), key, True)
+        kept = _compute(task, key)
+    except ThermoFixError as error:
+        failed = ImageResult(
+            file=job.file,
+            status="failed",
+            error=str(error),
+            asset=job.asset,
+            note=job.note,
+            zones=job.zones,
+        )
+        return Outcome(failed, None)
+    keep_image(task.work, key, kept)
+    return Outcome(kept.result, key)
+
+
+def plane_path(work: Path, key: str, name: str) -> Path:
+    """Return where a finished image's plane lies in the work folder."""
+    return work / f"{key}.{name}.tif"
+
+
+def _compute(task: ImageTask, key: str) -> KeptImage:
+    job, camera, purpose = task.job, task.survey.camera, task.survey.purpose
+    corrected, notes = _corrected(task)
+    found = find_regions(corrected)
+    if found.spikes:
+        notes = (*notes, f"{found.spikes} isolated pixels were bridged when looking for findings.")
+    if found.unlike:
+        notes = (
+            *notes,
+            f"{found.unlike} regions were left out: their zone's like zones show the same.",
+        )
+    measured = measure_regions(corrected, found.regions, camera, str(task.number), purpose)
+    settings = task.survey.criteria_settings
+    result = replace(
+        measure_image(corrected, notes),
+        findings=tuple(grade_finding(each, task.criteria, settings) for each in measured),
+        assessments=assess_image(corrected, measured, purpose),
+        photo=job.photo,
+    )
+    planes = Planes(
+        recorded_c=corrected.reading_k - np.float32(ZERO_CELSIUS_K),
+        corrected_c=corrected.surface_k - np.float32(ZERO_CELSIUS_K),
+        uncertainty_k=corrected.uncertainty_k,
+    )
+    files: dict[str, bytes] = {}
+    if task.planes:
+        files[_PLANES_INDEX] = _write_planes(task, key, corrected, planes)
+    if task.pictures:
+        pictures = encode_pictures(planes, result)
+        if job.photo is not None:
+            photo = encode_photo(job.photo)
+            if photo is None:
+                note = f"{job.photo.name}: the photograph cannot be read and is left out."
+                result = replace(result, notes=(*result.notes, note))
+            else:
+                pictures = replace(pictures, photo_jpeg=photo)
+        files |= pictures_to_files(pictures)
+    return KeptImage(result, files)
+
+
+def _write_planes(task: ImageTask, key: str, corrected: CorrectedFrame, planes: Planes) -> bytes:
+    hashes = {}
+    for name, plane in zip(PLANE_NAMES, (planes.corrected_c, planes.uncertainty_k), strict=True):
+        path = plane_path(task.work, key, name)
+        write_plane(path, plane, carried_tags=corrected.frame.carried_tags)
+        hashes[name] = _file_hash(path)
+    return json.dumps(hashes, sort_keys=True).encode()
+
+
+def _taken_over(task: ImageTask, key: str) -> KeptImage | None:
+    """Return finished work of this key, from an interrupted run or an earlier result."""
+    kept = load_kept(task.work, key, [_PLANES_INDEX] if task.planes else [])
+    if kept is not None and _planes_are_whole(
+        kept, {name: plane_path(task.work, key, name) for name in PLANE_NAMES}, task
+    ):
+        return kept
+    if task.older is None:
+        return None
+    kept = load_kept(task.older / ".kept", key, [_PLANES_INDEX] if task.planes else [])
+    if kept is None:
+        return None
+    old = {name: task.older / name / task.plane_name for name in PLANE_NAMES}
+    if not _planes_are_whole(kept, old, task):
+        return None
+    if task.planes:
+        for name in PLANE_NAMES:
+            _link(old[name], plane_path(task.work, key, name))
+    _link(task.older / ".kept" / f"{key}.zip", task.work / f"{key}.zip")
+    return kept
+
+
+def _planes_are_whole(kept: KeptImage, paths: dict[str, Path], task: ImageTask) -> bool:
+    if not task.planes:
+        return True
+    try:
+        hashes = json.loads(kept.files[_PLANES_INDEX])
+        return all(_file_hash(paths[name]) == hashes[name] for name in PLANE_NAMES)
+    except (OSError, KeyError, ValueError):
+        return False
+
+
+def _link(source: Path, target: Path) -> None:
+    """Make a file appear at another place, without copying where the file system can."""
+    with contextlib.suppress(FileNotFoundError):
+        target.unlink()
+    try:
+        os.link(source, target)
+    except OSError:
+        partial = target.with_name(f"{target.name}.{os.getpid()}.partial")
+        shutil.copyfile(source, partial)
+        partial.replace(target)
+
+
+def _key(task: ImageTask) -> str:
+    """Return the key of an image: its content, its inputs, the software."""
+    folder = task.survey.folder
+    parts = [
+        __version__.encode(),
+        canonical(task.number),
+        canonical(task.job, folder),
+        canonical(replace(task.survey, folder=folder, sheet=None, notes=()), folder),
+        canonical(task.criteria),
+        canonical(task.response),
+        canonical([task.planes, task.pictures]),
+    ]
+    parts += [_file_hash(path).encode() for path in _files_of(task.job)]
+    return key_of(parts)
+
+
+def _files_of(job: ImageJob) -> list[Path]:
+    files = [job.path]
+    if job.photo is not None:
+        files.append(job.photo)
+    for inputs in (job.inputs, *(zone.inputs for zone in job.zones)):
+        files += [
+            path for path in (inputs.emissivity_file, inputs.reflected_file) if path is not None
+        ]
+    return files
+
+
+def _file_hash(path: Path) -> str:
+    """Return the SHA-256 of a regular file; ``absent`` where it is none."""
+    if not path.is_file():
+        return "absent"
+    with path.open("rb") as stream:
+        return hashlib.file_digest(stream, "sha256").hexdigest()
+
+
+def _corrected(task: ImageTask) -> tuple[CorrectedFrame, tuple[str, ...]]:
+    job, camera = task.job, task.survey.camera
+    frame = read_frame(job.path, camera)
+    rows, columns = frame.shape
+    notes = list(frame.notes)
+    if frame.encoding.note:
+        notes.append(frame.encoding.note)
+    for zone in job.zones:
+        message = check_polygon(zone, columns, rows)
+        if message is not None:
+            notes.append(f"{job.file}: {message}")
+    notes += overlap_notes(job.zones, frame.shape)
+    corrected = correct_frame(
+        frame,
+        reading_k(frame),
+        job,
+        label_zones(job.zones, frame.shape),
+        camera,
+        radiation_models(task.survey.model, camera, task.response),
+        _planes(job),
+    )
+    return corrected, tuple(notes)
+
+
+def _planes(job: ImageJob) -> dict[Path, NDArray[np.float32]]:
+    """Read the emissivity and reflected-temperature planes that an image needs."""
+    planes = {}
+    # As numbers, whatever they mean: 'celsius' leaves values as they are.
+    plain = Camera(pixel="celsius")
+    for inputs in (job.inputs, *(zone.inputs for zone in job.zones)):
+        for path in (inputs.emissivity_file, inputs.reflected_file):
+            if path is not None and path not in planes:
+                planes[path] = read_frame(path, plain).values.astype(np.float32)
+    return planes
