@@ -41,6 +41,7 @@ def test_draft_loads_and_holds_what_the_images_tell(tmp_path: Path) -> None:
 def test_every_question_can_be_answered_as_it_stands(tmp_path: Path) -> None:
     text = re.sub(r"^# (\w+ = |\[\[)", r"\1", draft_sheet(tmp_path, COUNTS), flags=re.MULTILINE)
     (tmp_path / SHEET_NAME).write_text(text, encoding="utf-8")
+    (tmp_path / "weather.csv").touch()
     survey = load_survey(tmp_path, known_criteria=CRITERIA)
     origins = {one.origin for one in survey.images[0].inputs.values.values()}
     assert origins == {"given"}

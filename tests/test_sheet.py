@@ -467,7 +467,7 @@ def test_the_examples_of_the_reference_load(tmp_path: Path) -> None:
     text = (DOCS / "survey_sheet.md").read_text(encoding="utf-8")
     examples = re.findall(r"```toml\n(.*?)```", text, re.DOTALL)
     assert len(examples) >= 4
-    for name in ("house_rules.toml", "response.csv"):
+    for name in ("house_rules.toml", "response.csv", "weather.csv"):
         (tmp_path / name).touch()
     for example in examples:
         assert load(tmp_path, example, "a.tif").images

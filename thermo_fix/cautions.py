@@ -106,6 +106,45 @@ def inside_noise(delta_k: float, u_delta_k: float) -> str:
     )
 
 
+def overload(load_a: float, rated_a: float) -> str:
+    """Load above the rating."""
+    return (
+        f"Load was {load_a:g} A, above the rated {rated_a:g} A: the part is overloaded, and at its "
+        "rated load it would be cooler."
+    )
+
+
+def heat_without_current(where: str) -> str:
+    """Warm part that is said to carry no current."""
+    return (
+        f"{where} is warm and is said to carry no current: the heat has another source, such as a "
+        "neighbour, the sun, a leakage or an eddy current, or the current was misread. It is not "
+        "brought to another load."
+    )
+
+
+def far_from_load(share: float, factor: float) -> str:
+    """Extrapolation over a wide range of load."""
+    return (
+        f"The values at another load are extrapolated from {share:.0%} of the rating, by a factor "
+        f"of {factor:.1f}: repeat the image under more load before a costly decision."
+    )
+
+
+def hotter_inside() -> str:
+    """Limit of what lies inside, compared with a surface."""
+    return (
+        "Infrared sees a surface. A conductor under its insulation, a contact in its housing or a "
+        "winding in its frame is hotter than that: a surface within the limit does not prove that "
+        "the inside is."
+    )
+
+
+def limit_from_memory(name: str) -> str:
+    """Limit that is not confirmed against its source."""
+    return f'The limit "{name}" is quoted from memory: check it against the source before use.'
+
+
 def low_load(share: float) -> str:
     """Load below 40 percent."""
     return (

@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING, Annotated, NoReturn
 import typer
 
 from thermo_fix.errors import ThermoFixError
+from thermo_fix.solve_cli import solve
 from thermo_fix.version import __version__
 
 if TYPE_CHECKING:
@@ -40,6 +41,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     context_settings={"help_option_names": ["-h", "--help"]},
 )
+app.add_typer(solve)
 
 Folder = Annotated[
     Path, typer.Argument(help="The survey folder: images, and survey.toml if there is one.")

@@ -31,7 +31,10 @@ Origin = Literal["given", "surface table", "measured", "computed", "inferred", "
 
 Sense = Literal["hot", "cold"]
 Purpose = Literal["building", "electrical"]
+Side = Literal["inside", "outside"]
 TemperatureUnit = Literal["celsius", "fahrenheit"]
+Language = Literal["en", "de"]
+"""Of the report; one catalogue of words each."""
 PixelUnit = Literal["celsius", "kelvin", "linear"]
 ModelName = Literal["total", "band"]
 Grade = Literal["note", "watch", "plan", "act"]
@@ -125,11 +128,32 @@ class SceneInputs:
     """Load to which a rise is to be brought, besides the rated one, A."""
     design_air_c: float | None = None
     """Air for which the installation is designed, degC."""
+    side: Side | None = None
+    """Of the building's envelope that is seen; None where it was not told."""
 
     def value(self, key: str) -> float | None:
         """Value of an input, or None where it was not told."""
         found = self.values.get(key)
         return None if found is None else found.value
+
+    def told(self, key: str) -> Input | None:
+        """Return an input that was stated or measured; a default is a guess, and is not."""
+        found = self.values.get(key)
+        return None if found is None or found.origin == "assumed" else found
+
+    @property
+    def inside(self) -> bool | None:
+        """Whether the surface is inside: as told, else the air before it is nearer to indoors.
+
+        None where neither tells.
+        """
+        if self.side is not None:
+            return self.side == "inside"
+        air, indoor, outdoor = (self.told(key) for key in ("air_c", "indoor_c", "outdoor_c"))
+        if air is None or indoor is None or outdoor is None:
+            return None
+        to_indoor, to_outdoor = abs(air.value - indoor.value), abs(air.value - outdoor.value)
+        return None if to_indoor == to_outdoor else to_indoor < to_outdoor
 
 
 @dataclass(frozen=True, slots=True)
@@ -148,6 +172,73 @@ class Zone:
     """``foil`` or ``tape``: a reference patch."""
     load_u_a: float | None = None
     """Standard uncertainty (k = 1) of ``load_a``, A; None where the default is to be taken."""
+
+
+@dataclass(frozen=True, slots=True)
+class SurveyConditions:
+    """What the sheet says of the weather and the building at the survey; None: not told."""
+
+    rain: bool | None = None
+    """Rain on the surface, before or during the survey."""
+    sun_hours_since: float | None = None
+    """Hours between the last direct sun on the surface and the survey."""
+    steady_hours: float | None = None
+    """Hours before the survey for which indoor and outdoor air had been steady."""
+    pressure_difference_pa: float | None = None
+    """Outside minus inside, Pa; positive drives outdoor air in."""
+    u_value: Input | None = None
+    """Of the sound construction, W m-2 K-1."""
+
+
+@dataclass(frozen=True, slots=True)
+class Design:
+    """Conditions for which a building is judged besides those of the survey; None: not told."""
+
+    indoor_c: Input | None = None
+    humidity: Input | None = None
+    outdoor_c: Input | None = None
+    degree_days_k: Input | None = None
+    """Heating degree days of a year, K day."""
+    climate: str = ""
+    """Where the degree days come from, in words."""
+
+
+@dataclass(frozen=True, slots=True)
+class WeatherLog:
+    """Weather by time, in the local time of the images' clock, in order."""
+
+    file: str
+    times: tuple[datetime, ...]
+    columns: Mapping[str, tuple[float, ...]]
+    """By ``air_c`` (degC), ``humidity`` (0 to 1), ``wind_m_s``, ``rain``, ``sun`` (0: none);
+    NaN where a cell is empty."""
+    resolution: Mapping[str, float]
+    """Smallest step in which a column is written."""
+    notes: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class WeatherFacts:
+    """What a weather log says of the survey as a whole; None where it does not cover that."""
+
+    file: str
+    first: datetime
+    """When the first image was taken."""
+    last: datetime
+    outdoor_before_k: float | None = None
+    """Greatest departure of the outdoor air from its value at the first image, 24 h before, K."""
+    outdoor_during_k: float | None = None
+    """The same between the first and the last image, K."""
+    wind_max_m_s: float | None = None
+    """Between the first and the last image."""
+    dry_hours: float | None = None
+    """Hours without rain up to the first image, as far back as the log goes; 0 with rain during
+    the survey."""
+    rain_seen: bool = False
+    """Whether ``dry_hours`` ends at rain, and not at the beginning of the log."""
+    sunless_hours: float | None = None
+    """The same for sun."""
+    sun_seen: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -174,6 +265,10 @@ class ImageJob:
     photo: Path | None = None
     taken: datetime | None = None
     note: str = ""
+    conditions: SurveyConditions = field(default_factory=SurveyConditions)
+    """Of the survey as a whole; here because the image is judged by them."""
+    design: Design = field(default_factory=Design)
+    """Of the survey as a whole."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -228,8 +323,16 @@ class Survey:
     date: calendar.date | None = None
     surveyor: str = ""
     temperature_unit: TemperatureUnit = "celsius"
+    language: Language = "en"
     notes: tuple[str, ...] = ()
     """What was assumed about the survey as a whole, one sentence each."""
+    conditions: SurveyConditions = field(default_factory=SurveyConditions)
+    design: Design = field(default_factory=Design)
+    weather_file: Path | None = None
+    utc_offset_hours: float | None = None
+    """Of the images' clock; needed where the weather log is in another time."""
+    weather: WeatherFacts | None = None
+    """What the weather log says, once it is read."""
 
 
 # ---------------------------------------------------------------- what was read
@@ -544,6 +647,25 @@ class ImageResult:
     zones: tuple[Zone, ...] = ()
     assessments: tuple[Assessment, ...] = ()
     """Of groups of zones, or of the image as a whole."""
+    pixel_m: float | None = None
+    """Width of a pixel's footprint at the distance of the whole image, seen squarely, m."""
+
+
+@dataclass(frozen=True, slots=True)
+class PixelBudget:
+    """Where the uncertainty of a single pixel comes from, for all pixels of one label."""
+
+    name: str
+    """Of the zone; empty for the rest of the image."""
+    emissivity: float | None
+    """As used, the view angle included; None where a plane gives it."""
+    reading_c: NDArray[np.float64]
+    """(nodes,), degC, evenly spaced over the readings of the label."""
+    parts_k: Mapping[str, NDArray[np.float64]]
+    """Signed contribution to the surface temperature at the nodes, K (k = 1), by variable: equal
+    names are one variable. Empty where it depends on a plane."""
+    own: tuple[str, ...]
+    """Those of them that no two pixels share."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -556,6 +678,14 @@ class Planes:
     """Surface temperature, degC, NaN where unsolved."""
     uncertainty_k: NDArray[np.float32]
     """Standard uncertainty (k = 1), K."""
+    apparent_c: NDArray[np.float32] | None = None
+    """Apparent temperature, degC; None where it is the reading."""
+    labels: LabelArray | None = None
+    """0 for the rest of the image, i + 1 for zone i; None without zones."""
+    emissivity: NDArray[np.float32] | None = None
+    """Per pixel; None where each label has one."""
+    budgets: tuple[PixelBudget, ...] = ()
+    """By label; empty where not known."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -15,8 +15,7 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_fix.constants import ZERO_CELSIUS_K
-from thermo_fix.correct import correct_frame, radiation_models
+from thermo_fix.correct import correct_frame, planes_of, radiation_models
 from thermo_fix.criteria import Criterion
 from thermo_fix.errors import ThermoFixError
 from thermo_fix.find import find_regions
@@ -118,7 +117,7 @@ def plane_path(work: Path, key: str, name: str) -> Path:
 
 def _compute(task: ImageTask, key: str) -> KeptImage:
     job, camera, purpose = task.job, task.survey.camera, task.survey.purpose
-    corrected, notes = _corrected(task)
+    corrected, notes = correct_image(job, task.survey, task.response)
     found = find_regions(corrected)
     if found.spikes:
         notes = (*notes, f"{found.spikes} isolated pixels were bridged when looking for findings.")
@@ -130,16 +129,12 @@ def _compute(task: ImageTask, key: str) -> KeptImage:
     measured = measure_regions(corrected, found.regions, camera, str(task.number), purpose)
     settings = task.survey.criteria_settings
     result = replace(
-        measure_image(corrected, notes),
+        measure_image(corrected, notes, camera),
         findings=tuple(grade_finding(each, task.criteria, settings) for each in measured),
         assessments=assess_image(corrected, measured, purpose),
         photo=job.photo,
     )
-    planes = Planes(
-        recorded_c=corrected.reading_k - np.float32(ZERO_CELSIUS_K),
-        corrected_c=corrected.surface_k - np.float32(ZERO_CELSIUS_K),
-        uncertainty_k=corrected.uncertainty_k,
-    )
+    planes = planes_of(corrected)
     files: dict[str, bytes] = {}
     if task.planes:
         files[_PLANES_INDEX] = _write_planes(task, key, corrected, planes)
@@ -244,8 +239,27 @@ def _file_hash(path: Path) -> str:
         return hashlib.file_digest(stream, "sha256").hexdigest()
 
 
-def _corrected(task: ImageTask) -> tuple[CorrectedFrame, tuple[str, ...]]:
-    job, camera = task.job, task.survey.camera
+def correct_image(
+    job: ImageJob, survey: Survey, response: tuple[tuple[float, float], ...] | None
+) -> tuple[CorrectedFrame, tuple[str, ...]]:
+    """Read and correct one image of a survey, and return notes on how it was read.
+
+    Parameters
+    ----------
+    job
+        The image.
+    survey
+        For its camera and radiation model.
+    response
+        Points of the camera's response curve (um, relative), where the sheet names a file.
+
+    Raises
+    ------
+    ImageError
+        The image cannot be used.
+
+    """
+    camera = survey.camera
     frame = read_frame(job.path, camera)
     rows, columns = frame.shape
     notes = list(frame.notes)
@@ -262,7 +276,7 @@ def _corrected(task: ImageTask) -> tuple[CorrectedFrame, tuple[str, ...]]:
         job,
         label_zones(job.zones, frame.shape),
         camera,
-        radiation_models(task.survey.model, camera, task.response),
+        radiation_models(survey.model, camera, response),
         _planes(job),
     )
     return corrected, tuple(notes)

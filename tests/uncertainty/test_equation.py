@@ -430,3 +430,35 @@ def test_draws_use_the_same_names_as_the_contributions() -> None:
         rel=0.03,
     )
     assert len(first) == DRAWS
+
+
+@pytest.mark.parametrize(("emissivity", "angle_deg"), [(0.78, 60.0), (0.95, 60.0), (0.95, 70.0)])
+def test_emissivity_at_an_angle_moves_with_the_normal_one(
+    emissivity: float, angle_deg: float
+) -> None:
+    # Fresnel at the angle, scaled to the normal value, written once more: n from the normal
+    # reflectance ((n - 1)/(n + 1))^2, then the mean of both polarisations.
+    def at_angle(normal: Draws) -> Draws:
+        root = np.sqrt(1.0 - normal)
+        n = (1.0 + root) / (1.0 - root)
+        cosine, sine = math.cos(math.radians(angle_deg)), math.sin(math.radians(angle_deg))
+        inside = np.sqrt(1.0 - (sine / n) ** 2)
+        parallel = (n * cosine - inside) / (n * cosine + inside)
+        crossed = (cosine - n * inside) / (cosine + n * inside)
+        return np.asarray(1.0 - (parallel**2 + crossed**2) / 2.0)
+
+    u = 0.01
+    values = {
+        "emissivity": (emissivity, u),
+        "reflected_c": (10.0, 0.0),
+        "air_c": (10.0, 0.0),
+        "transmittance": (1.0, 0.0),
+        "view_angle_deg": (angle_deg, 0.0),
+    }
+    tested = equation(TotalModel(), values)
+    reading_k = 30.0 + ZERO_CELSIUS_K
+    drawn = at_angle(np.random.default_rng(3).normal(emissivity, u, 200_000))
+    reflected = (10.0 + 273.15) ** 4
+    surface = (((30.0 + 273.15) ** 4 - (1.0 - drawn) * reflected) / drawn) ** 0.25
+    assert tested.u_k(reading_k) == pytest.approx(surface.std(), rel=0.02)
+    assert tested.draw_k(reading_k, independent={}).std() == pytest.approx(surface.std(), rel=0.02)

@@ -2,6 +2,7 @@
 
 from thermo_fix.correct.frame import correct_frame
 from thermo_fix.correct.inputs import radiation_models
-from thermo_fix.correct.reference_zone import foil_temperature, zone_reading
+from thermo_fix.correct.readout import planes_of
+from thermo_fix.correct.reference_zone import foil_reading, zone_reading
 
-__all__ = ["correct_frame", "foil_temperature", "radiation_models", "zone_reading"]
+__all__ = ["correct_frame", "foil_reading", "planes_of", "radiation_models", "zone_reading"]

@@ -1,6 +1,7 @@
 """How a reference zone (foil, tape) is measured: its inner pixels, as one reading."""
 
 import math
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -93,15 +94,30 @@ def zone_reading(
     return ZoneReading(mean_k, float(np.std(readings, ddof=1)) / math.sqrt(patches), len(readings))
 
 
-def foil_temperature(
+@dataclass(frozen=True, slots=True)
+class FoilReading:
+    """The reflected apparent temperature that a foil zone shows."""
+
+    temperature_c: float
+    parts_k: Mapping[str, float]
+    """Contributions to its standard uncertainty, K, by what they come from."""
+    pixels: int
+
+    @property
+    def u_k(self) -> float:
+        """Standard uncertainty (k = 1), K."""
+        return math.hypot(*self.parts_k.values())
+
+
+def foil_reading(
     reading_k: NDArray[np.float32],
     zone: MaskArray,
     name: str,
     file: str,
     camera: Camera,
     model: RadiationModel,
-) -> Input:
-    """Reflected apparent temperature from a zone of crumpled foil.
+) -> FoilReading:
+    """Measure the reflected apparent temperature on a zone of crumpled foil.
 
     Emissivity 1 and distance 0 (ASTM E1862, reflector method): what is seen is what is reflected.
 
@@ -114,16 +130,10 @@ def foil_temperature(
     camera, model
         Accuracy and recorded settings; radiation model.
 
-    Returns
-    -------
-    Input
-        ``reflected_c``, degC; its uncertainty from the camera's calibration, the foil, and the
-        spread of the zone.
-
     Raises
     ------
     ImageError
-        Too few usable pixels.
+        Too few usable pixels, or no apparent temperature under the recorded settings.
 
     """
     measured = zone_reading(reading_k, zone, model, what=f"{file}: the foil zone {name!r}")
@@ -138,18 +148,31 @@ def foil_temperature(
     half_width = max(
         camera.accuracy_k, camera.accuracy_fraction * abs(measured.reading_k - ZERO_CELSIUS_K)
     )
-    u = math.hypot(
-        gain * half_width / math.sqrt(3.0),
-        gain * camera.nonuniformity_k,
-        gain * measured.u_spread_k,
-        _FOIL_U_K,
-    )
+    parts = {
+        "camera calibration": gain * half_width / math.sqrt(3.0),
+        "camera non-uniformity": gain * camera.nonuniformity_k,
+        "foil": _FOIL_U_K,
+        "spread in the zone": gain * measured.u_spread_k,
+    }
+    return FoilReading(mean_k - ZERO_CELSIUS_K, parts, measured.pixels)
+
+
+def foil_temperature(
+    reading_k: NDArray[np.float32],
+    zone: MaskArray,
+    name: str,
+    file: str,
+    camera: Camera,
+    model: RadiationModel,
+) -> Input:
+    """Return what :func:`foil_reading` finds as the input ``reflected_c``, degC."""
+    foil = foil_reading(reading_k, zone, name, file, camera, model)
     return Input(
         "reflected_c",
-        mean_k - ZERO_CELSIUS_K,
-        u,
+        foil.temperature_c,
+        foil.u_k,
         "measured",
         f"zone {name} of {file}",
         "measured",
-        f"mean of {measured.pixels} inner pixels of the foil zone {name!r}",
+        f"mean of {foil.pixels} inner pixels of the foil zone {name!r}",
     )

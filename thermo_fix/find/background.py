@@ -12,16 +12,19 @@ _TUKEY = 4.685
 """Tuning constant of Tukey's biweight (95 % efficiency for normal noise; Huber and Ronchetti,
 Robust Statistics, 2nd ed., table 4.4 - from memory)."""
 _ROUNDS = 20
-_STARTS = 100
-"""Random starts of the trimmed fit: with 35 % of the pixels in a finding, one of six-point starts
-is clean with a chance of 99.96 %."""
-_START_SAMPLE = 800
+_STARTS = {3: 25, 6: 100}
+"""Random starts of the trimmed fit by the number of terms: with 35 % of the pixels in a finding,
+one start is clean with a chance of 99.96 %."""
+_START_SAMPLE = 600
 _KEPT = 0.55
 """Share of the pixels that the trimmed fit follows."""
-_CONCENTRATIONS = 8
+_CONCENTRATIONS = 10
+_TRIAL_STEPS = 2
+_FOLLOWED = 8
 _CLEARLY_TIGHTER = 0.7
 _LARGE_ZONE_PX = 4000
 _SMALL_ZONE_PX = 150
+_GRID_PER_LENGTH = 4.0
 _SMOOTHING_SHARE = 0.10
 """Smoothing length as a share of the zone's longer side: structure much wider than this is
 background."""
@@ -97,10 +100,10 @@ def _robust_fit(
     level: NDArray[np.float64] = np.zeros(terms.shape[1])
     level[0] = np.median(values)
     plain = _reweighted(terms, values, sigma_k, level)
-    if terms.shape[1] == 1:
+    spread = _spread(values - terms @ plain)
+    if terms.shape[1] == 1 or _CLEARLY_TIGHTER * spread <= sigma_k:
         return plain
     trimmed = _reweighted(terms, values, sigma_k, _trimmed_fit(terms, values))
-    spread = max(_spread(values - terms @ plain), sigma_k)
     return trimmed if _spread(values - terms @ trimmed) < _CLEARLY_TIGHTER * spread else plain
 
 
@@ -122,16 +125,22 @@ def _trimmed_fit(terms: NDArray[np.float64], values: NDArray[np.float64]) -> NDA
     products = (terms[:, :, None] * terms[:, None, :]).reshape(count, width * width)
     sides = terms * values[:, None]
     ridge = 1e-9 * count * np.eye(width)
-    chosen = np.argpartition(rng.random((_STARTS, count)), width, axis=1)[:, :width]
+    starts = _STARTS[width]
+    chosen = np.argpartition(rng.random((starts, count)), width, axis=1)[:, :width]
     kept = round(_KEPT * count)
-    for _ in range(_CONCENTRATIONS):
-        weight = np.zeros((_STARTS, count))
+    for step in range(_CONCENTRATIONS):
+        starts = len(chosen)
+        weight = np.zeros((starts, count))
         np.put_along_axis(weight, chosen, 1.0, axis=1)
-        normal = (weight @ products).reshape(_STARTS, width, width) + ridge
+        normal = (weight @ products).reshape(starts, width, width) + ridge
         coefficients = np.linalg.solve(normal, (weight @ sides)[:, :, None])[:, :, 0]
         squares = np.square(values - coefficients @ terms.T)
         chosen = np.argpartition(squares, kept, axis=1)[:, :kept]
-    cost = np.take_along_axis(squares, chosen, axis=1).sum(axis=1)
+        cost = np.take_along_axis(squares, chosen, axis=1).sum(axis=1)
+        if step == _TRIAL_STEPS - 1:
+            # Only the most promising starts are worth following to their end.
+            best = np.argsort(cost, kind="stable")[:_FOLLOWED]
+            chosen, coefficients, cost = chosen[best], coefficients[best], cost[best]
     return np.asarray(coefficients[np.argmin(cost)], np.float64)
 
 
@@ -175,8 +184,20 @@ def _broad_structure(
     candidate = (np.abs(cv2.blur(field, (3, 3))) > limit).astype(np.uint8)
     weight[cv2.dilate(candidate, np.ones((7, 7), np.uint8)) > 0] = 0.0
     length = max(2.0, _SMOOTHING_SHARE * extent)
-    weighted = cv2.GaussianBlur(field * weight, (0, 0), length, borderType=cv2.BORDER_CONSTANT)
-    total = cv2.GaussianBlur(weight, (0, 0), length, borderType=cv2.BORDER_CONSTANT)
+    weighted = _smoothed(field * weight, length)
+    total = _smoothed(weight, length)
     # Where hardly any background is near, the polynomial alone has to do.
     smooth = weighted / np.maximum(total, 1e-6) * np.clip(total / 0.05, 0.0, 1.0)
     return np.asarray(smooth[rows, columns], np.float64)
+
+
+def _smoothed(field: NDArray[np.float32], length: float) -> NDArray[np.float32]:
+    """Smooth over a length, on a coarser grid where that is fine enough for it."""
+    step = max(1, int(length / _GRID_PER_LENGTH))
+    height, width = field.shape
+    size = (max(1, width // step), max(1, height // step))
+    coarse = field if step == 1 else cv2.resize(field, size, interpolation=cv2.INTER_AREA)
+    smooth = cv2.GaussianBlur(coarse, (0, 0), length / step, borderType=cv2.BORDER_CONSTANT)
+    if step > 1:
+        smooth = cv2.resize(smooth, (width, height), interpolation=cv2.INTER_LINEAR)
+    return np.asarray(smooth, np.float32)

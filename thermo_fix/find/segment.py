@@ -76,12 +76,11 @@ def outline_regions(
             (row, column), height = peak
             level = max(_HALF * height, floor)
             grown = _connected(rest & (smooth > level), row, column)
-            skirt = _skirt(smooth, rest & ~grown, grown, min_delta_k)
+            skirt = _skirt(smooth, rest & ~grown, grown, seed_level, min_delta_k)
             rest &= ~(grown | skirt)
             # The outline itself is taken from the pixels as they are: a mean over 3 x 3 pixels
             # would round it off. Single pixels lost to noise inside are filled.
-            mask = _solid(inside & grown_outline(excess, grown, level))
-            mask &= ~taken
+            mask = _solid(grown_outline(excess, grown, level), inside & ~taken)
             if np.count_nonzero(mask) < min_area_px or not _has_block(mask):
                 continue
             taken |= mask
@@ -107,8 +106,10 @@ def grown_outline(excess: NDArray[np.float32], grown: MaskArray, level: float) -
     return above | core
 
 
-def _solid(mask: MaskArray) -> MaskArray:
-    kept = cv2.morphologyEx(mask.astype(np.uint8), cv2.MORPH_CLOSE, _BLOCK)
+def _solid(mask: MaskArray, free: MaskArray) -> MaskArray:
+    """Fill small gaps as far as pixels are free, and return the largest part."""
+    kept = cv2.morphologyEx((mask & free).astype(np.uint8), cv2.MORPH_CLOSE, _BLOCK)
+    kept[~free] = 0
     count, parts, stats, _ = cv2.connectedComponentsWithStats(kept, connectivity=8)
     if count <= 2:
         return kept > 0
@@ -130,20 +131,30 @@ def _connected(mask: MaskArray, row: int, column: int) -> MaskArray:
 
 
 def _skirt(
-    smooth: NDArray[np.float32], rest: MaskArray, grown: MaskArray, min_delta_k: float
+    smooth: NDArray[np.float32],
+    rest: MaskArray,
+    grown: MaskArray,
+    seed_level: float,
+    min_delta_k: float,
 ) -> MaskArray:
-    """Return the flanks of a region: what is left of it without a peak of its own."""
+    """Return the flanks of a region: what is left of it without a peak of its own.
+
+    A part has a peak of its own where every way from it to the region dips below it by at least
+    ``min_delta_k``.
+    """
     skirt = np.zeros(rest.shape, bool)
     count, parts = cv2.connectedComponents(rest.astype(np.uint8), connectivity=8)
     touching = cv2.dilate(grown.astype(np.uint8), np.ones((5, 5), np.uint8)) > 0
     for part in range(1, count):
         here = parts == part
-        contact = here & touching
-        saddle = float(smooth[contact].max()) if contact.any() else -np.inf
-        if float(smooth[here].max()) < saddle + min_delta_k:
+        peak = _peak(smooth, here)
+        if peak is None or peak[1] < seed_level:
             skirt |= here
-        else:
-            skirt |= contact
+            continue
+        (row, column), height = peak
+        above = (rest | grown) & (smooth > height - min_delta_k)
+        joined = bool(np.any(_connected(above, row, column) & grown))
+        skirt |= here if joined else here & touching
     return skirt
 
 

@@ -8,16 +8,21 @@ import numpy as np
 from thermo_fix.constants import ZERO_CELSIUS_K
 from thermo_fix.measure.spot import spot_of_median, temperature_of
 from thermo_fix.measure.words import UNITS
+from thermo_fix.radiometry.surface import pixel_footprint_m
 from thermo_fix.records import (
+    Camera,
     CorrectedFrame,
     ImageResult,
     InputLine,
+    Limit,
     SceneInputs,
 )
 from thermo_fix.uncertainty.equation import MeasurementEquation
 
 
-def measure_image(corrected: CorrectedFrame, notes: tuple[str, ...]) -> ImageResult:
+def measure_image(
+    corrected: CorrectedFrame, notes: tuple[str, ...], camera: Camera | None = None
+) -> ImageResult:
     """Sum up a corrected image, without its findings.
 
     Parameters
@@ -26,6 +31,8 @@ def measure_image(corrected: CorrectedFrame, notes: tuple[str, ...]) -> ImageRes
         The image.
     notes
         What was said when it was read.
+    camera
+        For the footprint.
 
     Returns
     -------
@@ -51,6 +58,7 @@ def measure_image(corrected: CorrectedFrame, notes: tuple[str, ...]) -> ImageRes
         notes=(*notes, *corrected.notes),
         cautions=corrected.cautions,
         zones=job.zones,
+        pixel_m=_pixel_m(corrected, camera),
     )
     if not usable.any():
         return result
@@ -72,6 +80,19 @@ def measure_image(corrected: CorrectedFrame, notes: tuple[str, ...]) -> ImageRes
         u_median_k=u if math.isfinite(u) else None,
         recorded_median_c=reading - ZERO_CELSIUS_K,
     )
+
+
+def _pixel_m(corrected: CorrectedFrame, camera: Camera | None) -> float | None:
+    distance = corrected.inputs[0].values.get("distance_m")
+    if (
+        camera is None
+        or camera.ifov_mrad is None
+        or distance is None
+        or distance.value <= 0.0
+        or distance.origin == "assumed"
+    ):
+        return None
+    return pixel_footprint_m(camera.ifov_mrad, distance.value)
 
 
 def _input_lines(corrected: CorrectedFrame) -> tuple[InputLine, ...]:
@@ -96,6 +117,7 @@ def _input_lines(corrected: CorrectedFrame) -> tuple[InputLine, ...]:
                     note=given.note,
                 )
             )
+        lines += _fact_lines(inputs, corrected.inputs[0] if label else None, where)
         if label == 0:
             lines += _computed_lines(corrected.equations[0])
     encoding = corrected.frame.encoding
@@ -114,6 +136,26 @@ def _input_lines(corrected: CorrectedFrame) -> tuple[InputLine, ...]:
         )
     )
     return tuple(lines)
+
+
+def _fact_lines(inputs: SceneInputs, outer: SceneInputs | None, where: str) -> list[InputLine]:
+    """Return what was stated and is no measured quantity; a zone lists what differs."""
+    lines = []
+    for key in ("outdoors", "limit", "target_load_a", "design_air_c"):
+        stated = getattr(inputs, key)
+        if stated is None or (outer is not None and getattr(outer, key) == stated):
+            continue
+        unit, number, text = UNITS.get(key, ""), None, ""
+        if isinstance(stated, bool):
+            text = "yes" if stated else "no"
+        elif isinstance(stated, Limit):
+            rise = stated.temperature_c is None
+            unit, text = "K" if rise else "degC", stated.name
+            number = stated.rise_k if rise else stated.temperature_c
+        else:
+            number = stated
+        lines.append(InputLine(key, where, number, text, None, unit, "given"))
+    return lines
 
 
 def _text(key: str, inputs: SceneInputs) -> str:

@@ -24,16 +24,12 @@ class Site:
 
     def told(self, key: str) -> Input | None:
         """Return an input that was stated or measured; a default is a guess, and is not."""
-        found = self.inputs.values.get(key)
-        return None if found is None or found.origin == "assumed" else found
+        return self.inputs.told(key)
 
     @property
     def inside(self) -> bool | None:
-        """Whether the surface is on the warm side: the air before it is nearer to indoors."""
-        air, indoor, outdoor = (self.told(key) for key in ("air_c", "indoor_c", "outdoor_c"))
-        if air is None or indoor is None or outdoor is None:
-            return None
-        return abs(air.value - indoor.value) < abs(air.value - outdoor.value)
+        """Whether the surface is inside: as told, else the air before it is nearer to indoors."""
+        return self.inputs.inside
 
 
 Quantities = tuple[dict[str, Estimate], dict[str, tuple[str, ...]], dict[str, VariableWords]]

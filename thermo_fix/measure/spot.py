@@ -91,10 +91,22 @@ def temperature_of(spot: Spot, equation: MeasurementEquation) -> Estimate:
 
     """
     emissivity, reflected_c = spot.emissivity, spot.reflected_c
+    draws = equation.draw_k(
+        spot.reading_k,
+        independent=spot.independent(equation),
+        emissivity=emissivity,
+        reflected_c=reflected_c,
+    )
+    value, contributions = first_order(spot, equation)
+    return Estimate(value, contributions, draws - ZERO_CELSIUS_K)
+
+
+def first_order(spot: Spot, equation: MeasurementEquation) -> tuple[float, dict[str, float]]:
+    """Surface temperature of a spot, degC, with its signed contributions and without draws."""
+    emissivity, reflected_c = spot.emissivity, spot.reflected_c
     surface_k = float(
         equation.temperature_k(spot.reading_k, emissivity=emissivity, reflected_c=reflected_c)
     )
-    independent = spot.independent(equation)
     contributions: dict[str, float] = {}
     parts = equation.contributions_k(spot.reading_k, emissivity=emissivity, reflected_c=reflected_c)
     for key, part in parts.items():
@@ -104,13 +116,7 @@ def temperature_of(spot: Spot, equation: MeasurementEquation) -> Estimate:
             contributions[f"{NONUNIFORMITY} of {spot.name}"] = float(part)
         else:
             contributions[variable_name(equation, key)] = float(part)
-    draws = equation.draw_k(
-        spot.reading_k,
-        independent=independent,
-        emissivity=emissivity,
-        reflected_c=reflected_c,
-    )
-    return Estimate(surface_k - ZERO_CELSIUS_K, contributions, draws - ZERO_CELSIUS_K)
+    return surface_k - ZERO_CELSIUS_K, contributions
 
 
 def variable_name(equation: MeasurementEquation, key: str) -> str:

@@ -27,6 +27,10 @@ UNITS = {
     "indoor_c": "degC",
     "outdoor_c": "degC",
     "wind_m_s": "m/s",
+    "height_m": "m",
+    "load_exponent": "1",
+    "target_load_a": "A",
+    "design_air_c": "degC",
 }
 """Unit of each input of the sheet."""
 _WORDS = {
@@ -58,6 +62,11 @@ _WORDS = {
     ),
     "indoor_c": ("indoor air temperature", "measure the indoor air temperature"),
     "outdoor_c": ("outdoor air temperature", "measure the outdoor air temperature"),
+    "wind_m_s": ("wind", "measure the wind at {0}"),
+    "load_exponent": (
+        "exponent of the load",
+        "measure {0} again under another load",
+    ),
 }
 
 

@@ -130,7 +130,7 @@ def air_transmittance_u(air_c: float, humidity: float, distance_m: float) -> flo
 
     """
     w = float(absolute_humidity_g_m3(air_c, humidity))
-    short = (0.0016 + 5.0e-5 * w) * -math.expm1(-distance_m)
+    short = (0.0019 + 5.0e-5 * w) * -math.expm1(-distance_m)
     long = 4.0e-6 * (1.0 + 0.75 * w) * distance_m
     return math.hypot(short, long)
 

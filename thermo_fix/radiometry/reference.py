@@ -8,6 +8,7 @@ or an array, broadcast against the others.
 from dataclasses import replace
 
 import numpy as np
+from scipy.optimize import brentq
 
 from thermo_fix.radiometry.blackbody import RadiationModel, Real
 from thermo_fix.radiometry.path import OpticalPath, correction_map
@@ -20,8 +21,6 @@ window), K. With 0.5 K of doubt in the target's temperature an emissivity of 0.9
 
 PREFERRED_SEPARATION_K = 20.0
 """From here the result is as good as the procedure allows (same sources, from memory)."""
-
-_ROUNDS = 60
 
 
 def leaving_exitance(
@@ -127,21 +126,25 @@ def normal_emissivity(emissivity: float, angle_deg: float) -> float:
     Parameters
     ----------
     emissivity
-        As measured at the angle, above 0.
+        As measured at the angle, above 0 and at most 1.
     angle_deg
         View angle, 0 to below 90.
 
     Returns
     -------
     float
-        Such that times ``directional_factor`` it gives ``emissivity`` again; above 1 where no
-        dielectric can look like that.
+        Such that times ``directional_factor`` it gives ``emissivity`` again; unchanged below
+        ``DIELECTRIC_FROM``, where no angle is corrected for.
 
     """
-    normal = emissivity
-    for _ in range(_ROUNDS):
-        normal = emissivity / directional_factor(min(normal, 1.0), angle_deg)
-    return normal
+
+    def excess(normal: float) -> float:
+        return normal * directional_factor(normal, angle_deg) - emissivity
+
+    # An emissivity of 1 is 1 at any angle, and any other dielectric's falls with the angle.
+    if excess(emissivity) >= 0.0 or excess(1.0) <= 0.0:
+        return emissivity
+    return float(brentq(excess, emissivity, 1.0, xtol=1e-12))
 
 
 def _finite(ratio: Real) -> Real:

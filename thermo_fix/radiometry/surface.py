@@ -62,7 +62,7 @@ def fresnel_emissivity(index: float, angle_deg: float) -> float:
         Index or angle out of range.
 
     """
-    if index < 1.0 or not 0.0 <= angle_deg < 90.0:
+    if not index >= 1.0 or not 0.0 <= angle_deg < 90.0:
         raise DomainError("refractive index must be >= 1 and the view angle 0 to below 90 degrees")
     cosine = math.cos(math.radians(angle_deg))
     inside = math.sqrt(1.0 - (math.sin(math.radians(angle_deg)) / index) ** 2)
@@ -117,7 +117,7 @@ def pixel_footprint_m2(ifov_mrad: float, distance_m: float, angle_deg: float = 0
         Out of those ranges.
 
     """
-    if ifov_mrad <= 0.0 or distance_m <= 0.0 or not 0.0 <= angle_deg < 90.0:
+    if not (ifov_mrad > 0.0 and distance_m > 0.0 and 0.0 <= angle_deg < 90.0):
         raise DomainError("a footprint needs ifov_mrad > 0, distance_m > 0 and an angle below 90")
     side = pixel_footprint_m(ifov_mrad, distance_m)
     return side * side / math.cos(math.radians(angle_deg))

@@ -5,7 +5,7 @@ from collections.abc import Sequence
 from thermo_fix.records import BudgetLine, Finding
 from thermo_fix.report.catalogue import Words
 from thermo_fix.report.drawing import shares
-from thermo_fix.report.formatting import Units, percent, shortest, unit_sign, with_unit
+from thermo_fix.report.formatting import Units, percent, unit_sign, with_unit
 from thermo_fix.report.view import BudgetRow, BudgetView
 
 
@@ -56,5 +56,5 @@ def _sensitivity(line: BudgetLine, words: Words, units: Units) -> str:
         effect = units.from_kelvin_difference(line.sensitivity)
         per = with_unit("1", unit_sign(line.unit))
     else:
-        effect, per = units.from_kelvin_difference(line.sensitivity) / 100.0, "0.01"
-    return words("budget.per", effect=with_unit(shortest(effect, 2), sign), unit=per)
+        effect, per = units.from_kelvin_difference(line.sensitivity) / 100.0, units.number("0.01")
+    return words("budget.per", effect=with_unit(units.shortest(effect, 2), sign), unit=per)

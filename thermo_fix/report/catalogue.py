@@ -26,6 +26,15 @@ class Words:
         key = f"{family}.{member}"
         return self(key, **values) if key in self._texts else member
 
+    def family(self, family: str) -> dict[str, str]:
+        """All members of a family of keys with their texts."""
+        start = f"{family}."
+        return {
+            key.removeprefix(start): text
+            for key, text in self._texts.items()
+            if key.startswith(start)
+        }
+
     def count(self, key: str, number: int, /, **values: object) -> str:
         """Text that agrees with a number: ``key.one`` or ``key.other``."""
         return self(f"{key}.one" if number == 1 else f"{key}.other", n=number, **values)

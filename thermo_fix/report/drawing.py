@@ -10,7 +10,7 @@ from dataclasses import dataclass
 from typing import Final
 
 from thermo_fix.records import Finding, Sense, Zone
-from thermo_fix.report.formatting import Units, fixed
+from thermo_fix.report.formatting import Units
 
 _LABEL_SHARE: Final = 0.052
 """Size of a label as a share of the picture's width, for keeping labels apart (about 21 px of a
@@ -219,7 +219,7 @@ def ticks(low_c: float, high_c: float, units: Units, *, wanted: int = 6) -> tupl
     decimals = max(0, -math.floor(math.log10(step)))
     first, last = math.ceil(low / step), math.floor(high / step)
     return tuple(
-        Tick(100.0 * (count * step - low) / (high - low), fixed(count * step, decimals))
+        Tick(100.0 * (count * step - low) / (high - low), units.fixed(count * step, decimals))
         for count in range(first, last + 1)
     )
 

@@ -3,14 +3,13 @@
 from typing import Final
 
 from thermo_fix.records import GRADES, Finding, SurveyResult
+from thermo_fix.report.assessment_view import assessment_views
 from thermo_fix.report.budget_view import budget_views
 from thermo_fix.report.catalogue import Words
 from thermo_fix.report.formatting import (
     COVERAGE,
     Units,
-    fixed,
     known,
-    measured,
     percent,
     with_unit,
 )
@@ -56,6 +55,7 @@ class FindingViews:
             number=number,
             anchor=f"finding-{number}",
             id=finding.id,
+            image_number=image_number,
             image_anchor=f"image-{image_number}",
             image_title=image_title,
             file=finding.image,
@@ -81,6 +81,8 @@ class FindingViews:
             quote=quote,
             ungraded_why="" if finding.grade else self._why(gradings),
             gradings=gradings,
+            worse_elsewhere=self._worse_elsewhere(finding),
+            assessments=assessment_views(finding.assessments, words, units),
             settle=finding.settle or (quote.settle if quote else ""),
             step=words.of("step", f"{self._purpose}.{grade}"),
             cautions=finding.cautions,
@@ -124,8 +126,30 @@ class FindingViews:
         """Why a finding has no grade."""
         if not gradings:
             return self._words("grading.empty")
-        reasons = [f"{view.title}: {view.needs or view.grade_word}" for view in gradings]
+        reasons = [
+            f"{view.title}: {view.needs or view.grade_word}"
+            for view in gradings
+            if not view.scenario
+        ]
         return "; ".join(reasons)
+
+    def _worse_elsewhere(self, finding: Finding) -> tuple[str, ...]:
+        """The worst grade of each set of other conditions, where it beats the headline."""
+        worst: dict[str, int] = {}
+        for grading in finding.gradings:
+            if grading.scenario and grading.grade is not None:
+                rank = GRADES.index(grading.grade)
+                worst[grading.scenario] = max(rank, worst.get(grading.scenario, -1))
+        own = -1 if finding.grade is None else GRADES.index(finding.grade)
+        return tuple(
+            self._words(
+                "finding.elsewhere",
+                scenario=self._words.of("scenario", scenario),
+                grade=self._words.of("grade", GRADES[rank]),
+            )
+            for scenario, rank in worst.items()
+            if rank > own
+        )
 
     def _doubt(self, finding: Finding) -> str:
         words = self._words
@@ -141,7 +165,9 @@ class FindingViews:
     def _interval(self, finding: Finding) -> str:
         if finding.interval_c is None or not all(known(end) for end in finding.interval_c):
             return ""
-        low, high = (fixed(self._units.from_celsius(c), 1) for c in finding.interval_c)
+        low, high = (
+            self._units.fixed(self._units.from_celsius(c), 1) for c in finding.interval_c
+        )
         return self._words("finding.interval", low=low, high=with_unit(high, self._units.sign))
 
     def _area(self, finding: Finding) -> str:
@@ -152,7 +178,7 @@ class FindingViews:
         factor, unit = (1.0, "m²") if finding.area_m2 >= _SMALL_AREA_M2 else (_CM2_PER_M2, "cm²")
         u = finding.u_area_m2
         spread = None if u is None else COVERAGE * u * factor
-        size = measured(finding.area_m2 * factor, spread, unit, decimals=2)
+        size = self._units.measured(finding.area_m2 * factor, spread, unit, decimals=2)
         return words("finding.area", pixels=pixels, area=size.text)
 
     def _band_model(self, finding: Finding) -> str:

@@ -32,8 +32,12 @@ _UNIT_SIGNS: Final = {
     "deg": DEGREE,
     "degC": f"{DEGREE}C",
     "C": f"{DEGREE}C",
+    "degree": DEGREE,
     "um": "µm",
     "m2": "m²",
+    "W/m2": "W/m²",
+    "W m-2": "W/m²",
+    "W m-2 K-1": "W/(m² K)",
 }
 
 
@@ -145,6 +149,46 @@ class Units:
     """Temperatures in the unit that the survey asks for."""
 
     temperature_unit: TemperatureUnit = "celsius"
+    decimal_mark: str = "."
+
+    def number(self, text: str) -> str:
+        """A written number with the decimal mark of the language."""
+        return text if self.decimal_mark == "." else text.replace(".", self.decimal_mark)
+
+    def fixed(self, value: float, decimals: int) -> str:
+        """As the function ``fixed``."""
+        return self.number(fixed(value, decimals))
+
+    def shortest(self, value: float, digits: int = 6) -> str:
+        """As the function ``shortest``."""
+        return self.number(shortest(value, digits))
+
+    def measured(
+        self,
+        value: float,
+        uncertainty: float | None,
+        unit: str,
+        *,
+        uncertainty_unit: str | None = None,
+        decimals: int = 1,
+        sign: bool = False,
+    ) -> Measured:
+        """As the function ``measured``."""
+        both = measured(
+            value,
+            uncertainty,
+            unit,
+            uncertainty_unit=uncertainty_unit,
+            decimals=decimals,
+            sign=sign,
+        )
+        spread = both.uncertainty
+        return Measured(
+            self.number(both.value),
+            both.unit,
+            None if spread is None else self.number(spread),
+            both.uncertainty_unit,
+        )
 
     @property
     def fahrenheit(self) -> bool:
@@ -180,7 +224,7 @@ class Units:
         """A temperature with its expanded uncertainty (k = 2); ``u_k`` is the standard one."""
         if value_c is None or not math.isfinite(value_c):
             return None
-        return measured(
+        return self.measured(
             self.from_celsius(value_c),
             None if u_k is None else self.from_kelvin_difference(COVERAGE * u_k),
             self.sign,
@@ -193,7 +237,7 @@ class Units:
         """A difference with its expanded uncertainty (k = 2); ``u_k`` is the standard one."""
         if value_k is None or not math.isfinite(value_k):
             return None
-        return measured(
+        return self.measured(
             self.from_kelvin_difference(value_k),
             None if u_k is None else self.from_kelvin_difference(COVERAGE * u_k),
             self.difference_sign,
@@ -210,15 +254,15 @@ class Units:
             u_sign = self.difference_sign
             sign = self.sign if celsius else u_sign
         if value is None or not known(value):
-            text = "" if spread is None else measured(0.0, spread, sign).uncertainty or ""
+            text = "" if spread is None else self.measured(0.0, spread, sign).uncertainty or ""
             return "", with_unit(text, u_sign) if text else ""
         if celsius:
             value = self.from_celsius(value)
         elif unit == "K":
             value = self.from_kelvin_difference(value)
         if spread is None:
-            return with_unit(shortest(value, 5), sign), ""
-        both = measured(value, spread, sign, uncertainty_unit=u_sign)
+            return with_unit(self.shortest(value, 5), sign), ""
+        both = self.measured(value, spread, sign, uncertainty_unit=u_sign)
         return both.plain, with_unit(both.uncertainty or "", u_sign)
 
     def standard_uncertainty(self, u_k: float | None) -> str | None:
@@ -227,7 +271,7 @@ class Units:
             return None
         value = self.from_kelvin_difference(u_k)
         decimals = significant_place(value) if value > 0.0 else 1
-        return with_unit(fixed(value, min(decimals, 3)), self.difference_sign)
+        return with_unit(self.fixed(value, min(decimals, 3)), self.difference_sign)
 
 
 def percent(probability: float) -> str:

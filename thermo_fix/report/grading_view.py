@@ -5,7 +5,7 @@ from typing import Final
 
 from thermo_fix.records import GRADES, Finding, Grading
 from thermo_fix.report.catalogue import Words
-from thermo_fix.report.formatting import COVERAGE, Units, known, measured, percent, unit_sign
+from thermo_fix.report.formatting import COVERAGE, Units, known, percent, unit_sign
 from thermo_fix.report.view import Chance, GradeKey, GradingView
 
 _NEGLIGIBLE_CHANCE: Final = 0.005
@@ -41,8 +41,10 @@ def _grading_view(grading: Grading, finding: Finding, words: Words, units: Units
         needs=needs,
         settle=grading.settle,
         note=grading.note,
+        scenario=grading.scenario,
         decides=(
             finding.grade is not None
+            and not grading.scenario
             and grading.criterion == finding.criterion
             and grading.grade == finding.grade
         ),
@@ -57,7 +59,7 @@ def _value(grading: Grading, units: Units) -> str | None:
     celsius = units.is_celsius(grading.unit)
     sign = unit_sign(grading.unit)
     kelvin = grading.unit == "K"
-    own = measured(
+    own = units.measured(
         grading.value,
         u,
         sign,

@@ -1,8 +1,13 @@
 """Pictures of one image: false colours for the eye, and the numbers themselves as 16-bit PNG.
 
+What the page's reader needs besides the planes (which zone a pixel belongs to, where its
+uncertainty comes from) travels as ``budgets``, so that a difference between two pixels is stated
+with the correlation between them.
+
 The only module of the report that uses OpenCV and matplotlib's colour maps.
 """
 
+import json
 import math
 import struct
 import zlib
@@ -27,6 +32,10 @@ DATA_STEP_K: Final = 0.01
 
 SPAN_PERCENTILES: Final = (0.5, 99.5)
 """Share of the pixels that the colour scale holds, in per cent. Common practice, no source."""
+
+EMISSIVITY_STEP: Final = 1e-4
+
+HISTOGRAM_BINS: Final = 64
 
 _SAMPLE_PX: Final = 65_536
 """Pixels that the percentiles are taken from: more do not move them visibly."""
@@ -81,6 +90,18 @@ class Pictures:
     photo_jpeg: bytes | None = None
     photo_png: bytes | None = None
     """Visible photograph, already reduced; JPEG wins where both are there."""
+    apparent_data: DataPlane | None = None
+    """Apparent temperature, degC; None where it is the reading."""
+    emissivity_data: DataPlane | None = None
+    """None where each label has one emissivity."""
+    labels_png: bytes | None = None
+    """Which zone a pixel belongs to, 8 bit (16 bit from 256 zones on); None without zones."""
+    budgets: bytes = b"[]"
+    """JSON: by label, what ``PixelBudget`` says, with contributions to four digits."""
+    by_pixel: bool = True
+    """Whether the uncertainty of some pixels is known from its plane alone."""
+    histogram: tuple[int, ...] = ()
+    """Pixels outside ignored zones by surface temperature, in equal steps of the colour scale."""
 
     @property
     def data_png(self) -> bytes:
@@ -107,7 +128,59 @@ def encode_pictures(planes: Planes, image: ImageResult, *, colour_map: str = "in
         data=encode_data(planes.corrected_c),
         uncertainty_data=encode_data(planes.uncertainty_k),
         recorded_data=encode_data(planes.recorded_c),
+        apparent_data=None if planes.apparent_c is None else encode_data(planes.apparent_c),
+        emissivity_data=(
+            None
+            if planes.emissivity is None
+            else encode_data(planes.emissivity, step=EMISSIVITY_STEP)
+        ),
+        labels_png=_labels_png(planes),
+        budgets=_budgets(planes),
+        by_pixel=not all(budget.parts_k for budget in planes.budgets) or not planes.budgets,
+        histogram=_histogram(planes, image, low, high),
     )
+
+
+def _labels_png(planes: Planes) -> bytes | None:
+    if planes.labels is None:
+        return None
+    many = int(planes.labels.max(initial=0)) > 255
+    return _png(planes.labels.astype(np.uint16 if many else np.uint8))
+
+
+def _budgets(planes: Planes) -> bytes:
+    found = [
+        {
+            "name": budget.name,
+            "emissivity": _short(budget.emissivity),
+            "low": float(budget.reading_c[0]) if budget.reading_c.size else 0.0,
+            "step": float(budget.reading_c[1] - budget.reading_c[0])
+            if budget.reading_c.size > 1
+            else 1.0,
+            "parts": {
+                name: [_short(float(part)) for part in parts]
+                for name, parts in budget.parts_k.items()
+            },
+            "own": list(budget.own),
+        }
+        for budget in planes.budgets
+    ]
+    return json.dumps(found, separators=(",", ":"), allow_nan=False).encode()
+
+
+def _short(value: float | None) -> float | None:
+    """A number to four digits; JSON has no NaN."""
+    return None if value is None or not math.isfinite(value) else float(f"{value:.4g}")
+
+
+def _histogram(planes: Planes, image: ImageResult, low: float, high: float) -> tuple[int, ...]:
+    plane = planes.corrected_c
+    usable = np.isfinite(plane)
+    if planes.labels is not None and len(image.zones) == len(planes.budgets) - 1:
+        ignored = np.array([False, *(zone.ignore for zone in image.zones)])
+        usable &= ~ignored[planes.labels]
+    counts, _ = np.histogram(plane[usable], HISTOGRAM_BINS, (low, high))
+    return tuple(int(count) for count in counts)
 
 
 def shared_span(planes: Planes, image: ImageResult) -> tuple[float, float]:
@@ -133,15 +206,18 @@ def shared_span(planes: Planes, image: ImageResult) -> tuple[float, float]:
     return (low, high) if high - low >= 0.2 else (low - 0.5, high + 0.5)
 
 
-def encode_data(plane: FloatArray) -> DataPlane:
-    """Encode a plane of numbers without loss beyond half a step; NaN and infinities become 0."""
+def encode_data(plane: FloatArray, *, step: float = DATA_STEP_K) -> DataPlane:
+    """Encode a plane of numbers without loss beyond half a step; NaN and infinities become 0.
+
+    ``step`` is the least step; planes of more than 65,534 of them take a whole multiple of it.
+    """
     finite = np.isfinite(plane)
     values = np.where(finite, plane, 0.0).astype(np.float64)
     if not finite.any():
-        return DataPlane(_png(np.zeros(plane.shape, np.uint16)), 0.0, DATA_STEP_K)
+        return DataPlane(_png(np.zeros(plane.shape, np.uint16)), 0.0, step)
     offset = math.floor(float(values[finite].min()))
     span = float(values[finite].max()) - offset
-    step = DATA_STEP_K * max(1, math.ceil(span / (DATA_STEP_K * (_COUNTS - 1))))
+    step *= max(1, math.ceil(span / (step * (_COUNTS - 1))))
     counts = np.where(finite, np.rint((values - offset) / step) + 1.0, 0.0)
     return DataPlane(_png(counts.astype(np.uint16)), float(offset), step)
 
@@ -183,6 +259,25 @@ def colour_stops(colour_map: str, number: int = 17) -> tuple[str, ...]:
     """Evenly spaced colours of a map from its cold to its hot end, as ``#rrggbb``."""
     places = np.rint(np.linspace(0, _COLOURS - 1, number)).astype(int) + len(_HATCH_GREYS)
     return tuple("#" + bytes(_palette(colour_map)[place]).hex() for place in places)
+
+
+def palette_bytes(colour_map: str) -> bytes:
+    """Red, green and blue of each colour of a map, from cold to hot, then of the two greys."""
+    palette = _palette(colour_map)
+    return bytes(np.roll(palette, -len(_HATCH_GREYS), axis=0))
+
+
+def crop_png(png: bytes, x: float, y: float, width: float, height: float) -> bytes:
+    """A part of a colour picture, for pages that do not hold the whole."""
+    picture = cv2.imdecode(np.frombuffer(png, np.uint8), cv2.IMREAD_COLOR)
+    if picture is None:
+        raise ValueError("the bytes are no PNG")
+    rows = slice(max(0, math.floor(y)), math.ceil(y + height))
+    columns = slice(max(0, math.floor(x)), math.ceil(x + width))
+    done, encoded = cv2.imencode(".png", picture[rows, columns], list(_FAST_PNG))
+    if not done:
+        raise ValueError("the part cannot be written as PNG")
+    return encoded.tobytes()
 
 
 @lru_cache(maxsize=len(COLOUR_MAPS))

@@ -5,6 +5,8 @@ from typing import Final
 
 from thermo_fix import cautions
 from thermo_fix.records import Grade, ImageResult, InputLine, SurveyResult
+from thermo_fix.report.assessment_view import assessment_views
+from thermo_fix.report.camera_view import camera_rows
 from thermo_fix.report.catalogue import Words
 from thermo_fix.report.finding_view import FindingViews
 from thermo_fix.report.formatting import Units, iso, percent
@@ -12,9 +14,12 @@ from thermo_fix.report.view import (
     GRADE_KEYS,
     CriterionText,
     FileRow,
+    FindingView,
     ImageView,
     InputRow,
+    Rank,
     ReportView,
+    SettingRow,
 )
 
 MOST_CARDS: Final = 12
@@ -42,7 +47,7 @@ class SurveyViews:
         self._words = words
         self._version = version
         self._criteria = criteria
-        self._units = Units(result.survey.temperature_unit)
+        self._units = Units(result.survey.temperature_unit, words("common.decimal_mark"))
         self._findings = FindingViews(result, words, self._units)
         self._image_numbers = {image.file: n for n, image in enumerate(result.images, start=1)}
 
@@ -71,6 +76,8 @@ class SurveyViews:
                 )
                 for key in GRADE_KEYS
             ),
+            headline=self._headline(findings),
+            ranks=self._ranks(findings, cards),
             cards=cards,
             more=words.count("act.more", left_out) if left_out else "",
             outcome=self._outcome(),
@@ -84,6 +91,12 @@ class SurveyViews:
                 FileRow(image.file, words.of("status", image.status), image.sha256 or "")
                 for image in result.images
             ),
+            camera=camera_rows(result.survey.camera, words, self._units),
+            settings=tuple(
+                SettingRow(key, self._units.shortest(value), words("origin.given"))
+                for key, value in sorted(result.survey.criteria_settings.items())
+            ),
+            software=f"thermo_fix {self._version}",
             units=self._units,
         )
 
@@ -104,8 +117,57 @@ class SurveyViews:
             (words("masthead.date"), iso(survey.date) if survey.date else not_told),
             (words("masthead.surveyor"), survey.surveyor or not_told),
             (words("masthead.images"), images),
-            (words("masthead.model"), words.of("model", survey.model)),
-            (words("masthead.software"), f"thermo_fix {self._version}"),
+        )
+
+    def _headline(self, findings: Sequence[FindingView]) -> tuple[str, ...]:
+        """What was measured and what to do, in plain words."""
+        words = self._words
+        if not findings:
+            return ()
+        done = len(self._result.images) - len(self._result.failed)
+        acts, plans = (
+            sum(view.grade == grade for view in findings) for grade in ("act", "plan")
+        )
+        sentences = [
+            words.count("headline.images", done)
+            + " "
+            + words.count("headline.findings", len(findings))
+        ]
+        if acts:
+            sentences.append(words.count("headline.act", acts))
+        if plans:
+            sentences.append(words.count("headline.plan", plans))
+        if not acts and not plans:
+            sentences.append(words("headline.calm"))
+        sentences.append(
+            words(
+                "headline.worst",
+                place=findings[0].title,
+                temperature=(
+                    findings[0].temperature.text
+                    if findings[0].temperature
+                    else words("common.not_known")
+                ),
+                comparison=findings[0].comparison,
+            )
+        )
+        return tuple(sentences)
+
+    def _ranks(
+        self, findings: Sequence[FindingView], cards: Sequence[FindingView]
+    ) -> tuple[Rank, ...]:
+        words = self._words
+        return tuple(
+            Rank(
+                grade=key,
+                word=words.of("grade", key),
+                meaning=words.of("grade_meaning", key),
+                number=sum(view.grade == key for view in findings),
+                step=words.of("step", f"{self._result.survey.purpose}.{key}"),
+                cards=tuple(view for view in cards if view.grade == key),
+            )
+            for key in GRADE_KEYS
+            if any(view.grade == key for view in cards)
         )
 
     def _assumed(self) -> tuple[str, ...]:
@@ -211,6 +273,9 @@ class SurveyViews:
             unsolved=self._unsolved(image),
             notes=image.notes,
             cautions=image.cautions,
+            assessments=assessment_views(image.assessments, words, self._units),
+            grade=views[0].grade if views else None,
+            grade_word=views[0].grade_word if views else "",
             picture_text=" ".join(
                 [
                     words("picture.alt", title=title),

@@ -56,8 +56,30 @@ class GradingView:
     needs: str | None
     settle: str
     note: str
+    scenario: str
+    """Under which other conditions; empty as measured."""
     decides: bool
     """Whether the finding's grade comes from here."""
+
+
+@dataclass(frozen=True, slots=True)
+class FigureRow:
+    """One number of an assessment."""
+
+    label: str
+    value: str
+    note: str
+
+
+@dataclass(frozen=True, slots=True)
+class AssessmentView:
+    """What a trade concludes beyond a grade."""
+
+    title: str
+    statement: str
+    figures: tuple[FigureRow, ...]
+    cautions: tuple[str, ...]
+    source: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -93,6 +115,7 @@ class FindingView:
     """Rank in the survey, 1 is the worst."""
     anchor: str
     id: str
+    image_number: int
     image_anchor: str
     image_title: str
     file: str
@@ -124,6 +147,9 @@ class FindingView:
     """The grading that decided the grade."""
     ungraded_why: str
     gradings: tuple[GradingView, ...]
+    worse_elsewhere: tuple[str, ...]
+    """Other conditions under which the grade would be worse, in words."""
+    assessments: tuple[AssessmentView, ...]
     settle: str
     step: str
     cautions: tuple[str, ...]
@@ -168,6 +194,10 @@ class ImageView:
     unsolved: str
     notes: tuple[str, ...]
     cautions: tuple[str, ...]
+    assessments: tuple[AssessmentView, ...]
+    grade: GradeKey | None
+    """Of its worst finding; None without findings."""
+    grade_word: str
     picture_text: str
     """Text alternative of the corrected picture."""
 
@@ -179,6 +209,27 @@ class FileRow:
     file: str
     status: str
     sha256: str
+
+
+@dataclass(frozen=True, slots=True)
+class Rank:
+    """Findings of one grade at the head of the report."""
+
+    grade: GradeKey
+    word: str
+    meaning: str
+    number: int
+    step: str
+    cards: tuple[FindingView, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class SettingRow:
+    """One property of the camera or the survey that numbers depend on."""
+
+    label: str
+    value: str
+    origin_word: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -195,6 +246,10 @@ class ReportView:
     survey_notes: tuple[str, ...]
     counts: tuple[tuple[GradeKey, str, str, int], ...]
     """Grade, word, meaning, number of findings."""
+    headline: tuple[str, ...]
+    """The outcome in plain words, a sentence each."""
+    ranks: tuple[Rank, ...]
+    """The cards by grade."""
     cards: tuple[FindingView, ...]
     more: str
     """What the cards leave out, in words."""
@@ -209,4 +264,8 @@ class ReportView:
     criteria: tuple[CriterionText, ...]
     cautions: tuple[str, ...]
     files: tuple[FileRow, ...]
+    camera: tuple[SettingRow, ...]
+    settings: tuple[SettingRow, ...]
+    """Limits that the criteria were given."""
+    software: str
     units: Units

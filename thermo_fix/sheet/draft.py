@@ -85,6 +85,8 @@ def _survey(title: str, facts: Sequence[FileFacts]) -> str:
             date,
             _question('surveyor = ""', "who took the images"),
             _question('temperature_unit = "celsius"', 'of the report: "celsius" or "fahrenheit"'),
+            _question('weather = "weather.csv"', "log with time, air_c, humidity, wind_m_s"),
+            _question("utc_offset_hours = 1.0", "of the images' clock, if the log keeps other time"),
         )
     )
 
@@ -145,6 +147,13 @@ def _scene() -> str:
             _question("indoor_c = 20.5", "building: air on the warm side"),
             _question("outdoor_c = 2.0", "building: air outside"),
             _question("wind_m_s = 1.5", "at the surface"),
+            _question('side = "inside"', 'building: or "outside"; else told by air_c'),
+            _question("height_m = 2.5", "building: over which air flows along the surface"),
+            _question("outdoors = false", "electrical: true where the wind reaches the parts"),
+            _question(default("load_exponent"), "electrical: rise goes with current to this power"),
+            _question("target_load_a = 80", "electrical: a load of interest besides the rated one"),
+            _question('limit = "termination 75"', "electrical: or a number in degC"),
+            _question("design_air_c = 40", "electrical: the air that the plant is made for"),
             _question("transmittance = 0.98", "of the air, if measured; replaces the formula"),
             "# An infrared window in the path:\n",
             _question(
@@ -167,6 +176,20 @@ def _detect() -> str:
             _line(f"min_area_px = {usual.min_area_px}", "smallest finding"),
             "\n[criteria]\n",
             _question('use = ["iso13788-surface-factor"]', "else those of the purpose"),
+            "\n[conditions]\n",
+            "# Building: how it was before and during the survey. The report checks it.\n",
+            _question("rain = false", "on the surface, before or during"),
+            _question("sun_hours_since = 12", "hours since direct sun on the surface"),
+            _question("steady_hours = 24", "hours that indoor and outdoor air were steady"),
+            _question("pressure_difference_pa = 50", "outside minus inside, for air leakage"),
+            _question("u_value = 0.3", "of the sound wall, W m-2 K-1"),
+            "\n[design]\n",
+            "# Building: the cold day for which moisture is judged, and a year's heating.\n",
+            _question("indoor_c = 20", "degC"),
+            _question("humidity = 0.5", "indoors, 0 to 1"),
+            _question("outdoor_c = -5", "degC, below indoor_c"),
+            _question("degree_days_k = 2500", "heating degree days of a year, K day"),
+            _question('climate = ""', "where the degree days come from"),
         )
     )
 

@@ -65,12 +65,13 @@ def put_key(
     wanted = copy.deepcopy(raw)
     table = _at(wanted, place)
     names = key.split(".")
+    if not _has(table, names[:-1]):
+        raise SheetError(f"{SHEET_NAME}: {where} has no {names[0]} of its own to write to")
     there = _has(table, names)
     if there and not force:
         line = line_numbers(text).get((*place, *names), line_numbers(text).get(place, 1))
         raise SheetError(
-            f"{SHEET_NAME}, line {line}: {where} has its {key} already; "
-            "use --force to overwrite it"
+            f"{SHEET_NAME}, line {line}: {where} has its {key} already; use --force to overwrite it"
         )
     _set(table, names, tomllib.loads(f"{_NEW} = {value}")[_NEW])
     edited = _replaced(text, place, names, value) if there else None
@@ -126,14 +127,15 @@ def _inserted(
 ) -> str | None:
     """Insert a line behind the last key of a table whose value ends on its own line."""
     newline = "\r\n" if "\r\n" in text else "\n"
-    lines = text.splitlines(keepends=True)
+    lines = [f"{line}\n" for line in text.split("\n")]
+    lines[-1] = lines[-1][:-1]
     own = {
         number
         for path, number in line_numbers(text).items()
         if len(path) == len(place) + 1 and path[:-1] == place and path[-1] not in ("zone", "detect")
     }
     for number in sorted(own, reverse=True):
-        before = lines[: number]
+        before = lines[:number]
         if not before[-1].endswith("\n"):
             before[-1] += newline
         indent = before[-1][: len(before[-1]) - len(before[-1].lstrip(" \t"))]
@@ -155,7 +157,7 @@ def _replaced(text: str, place: KeyPath, names: list[str], value: str) -> str | 
 
 def _means(text: str, wanted: Mapping[str, Any]) -> bool:
     try:
-        return tomllib.loads(text.replace("\r\n", "\n")) == wanted
+        return tomllib.loads(text) == wanted
     except tomllib.TOMLDecodeError:
         return False
 

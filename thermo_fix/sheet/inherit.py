@@ -11,7 +11,7 @@ from pathlib import Path
 
 from thermo_fix.defaults import Default, default_for
 from thermo_fix.radiometry.surroundings import REFLECTED_U_K
-from thermo_fix.records import Input, SceneInputs, SkyAndGround
+from thermo_fix.records import Input, Limit, SceneInputs, Side, SkyAndGround
 from thermo_fix.sheet.lines import KeyPath
 from thermo_fix.sheet.ranges import assumed_spread
 from thermo_fix.sheet.schema import Emissivity, Quantity, Reflected, SceneKeys, Window
@@ -27,6 +27,8 @@ _PLAIN_KEYS = (
     "indoor_c",
     "outdoor_c",
     "wind_m_s",
+    "load_exponent",
+    "height_m",
     "transmittance",
 )
 _DEFAULTED = ("emissivity", "air_c", "humidity", "distance_m", "view_angle_deg")
@@ -43,7 +45,15 @@ class Stated:
     reflected_zone: str | None = None
     reflected_stated_at: KeyPath = ()
     sky: SkyAndGround | None = None
+    outdoors: bool | None = None
+    limit: Limit | None = None
+    target_load_a: float | None = None
+    design_air_c: float | None = None
+    side: Side | None = None
 
+
+_FACTS = ("outdoors", "limit", "target_load_a", "design_air_c", "side")
+"""Keys that are no measured quantities and have no uncertainty."""
 
 _U_ASSUMED = "Its standard uncertainty was not told and is assumed (common practice, no source)."
 
@@ -54,7 +64,7 @@ FileFinder = Callable[[str, KeyPath], Path]
 def stated(table: SceneKeys, scope: str, path: KeyPath, find_file: FileFinder) -> Stated:
     """Turn the scene keys of one table into inputs of that scope."""
     values: dict[str, Input] = {}
-    result = Stated(values)
+    result = Stated(values, **{key: getattr(table, key) for key in _FACTS})
     if table.emissivity is not None:
         result = _emissivity(table.emissivity, scope, path, find_file, result)
     if table.reflected_c is not None:
@@ -77,8 +87,12 @@ def merged(outer: Stated, inner: Stated) -> Stated:
     values.update(inner.values)
     emissivity = inner if "emissivity" in inner.values else outer
     reflected = inner if "reflected_c" in inner.values else outer
+    facts = {
+        key: getattr(outer if getattr(inner, key) is None else inner, key) for key in _FACTS
+    }
     return Stated(
         values,
+        **facts,
         emissivity_file=emissivity.emissivity_file,
         surface=emissivity.surface,
         reflected_file=reflected.reflected_file,
@@ -125,6 +139,7 @@ def completed(in_force: Stated) -> SceneInputs:
         reflected_zone=in_force.reflected_zone,
         sky=in_force.sky,
         surface=in_force.surface,
+        **{key: getattr(in_force, key) for key in _FACTS},
     )
 
 

@@ -15,6 +15,7 @@ from thermo_fix.defaults import default_for, default_value
 from thermo_fix.errors import FolderError, SheetError
 from thermo_fix.records import Camera, DetectSettings, ImageJob, Origin, Recorded, Survey, Zone
 from thermo_fix.sheet import files, ranges, toml_text
+from thermo_fix.sheet.building import design_conditions, survey_conditions
 from thermo_fix.sheet.inherit import Stated, completed, merged, stated
 from thermo_fix.sheet.lines import KeyPath
 from thermo_fix.sheet.problems import Problems, nearest
@@ -23,7 +24,9 @@ from thermo_fix.sheet.schema import (
     SHEET_VERSION,
     TOP_KEYS,
     CameraTable,
+    ConditionsTable,
     CriteriaTable,
+    DesignTable,
     DetectTable,
     ImageTable,
     RadiationTable,
@@ -158,9 +161,12 @@ class _SheetLoader:
         scene_table = self._table("scene", SceneKeys)
         detect_table = self._table("detect", DetectTable)
         criteria = self._table("criteria", CriteriaTable)
+        conditions_table = self._table("conditions", ConditionsTable)
+        design_table = self._table("design", DesignTable)
 
         response = self._needed_file(camera_table, "camera", "response_file")
         criteria_file = self._needed_file(criteria, "criteria", "file")
+        weather_file = self._needed_file(survey, "survey", "weather")
         scene = self._stated(scene_table, "scene", ("scene",))
         detect = _detect(DetectSettings(), detect_table)
         images = self._images(scene, detect)
@@ -175,12 +181,18 @@ class _SheetLoader:
         else:
             named = {image.file for image in images} | self._planes
             unnamed = sorted(set(self.found_files) - named)
+        conditions = survey_conditions(conditions_table)
+        design = design_conditions(design_table)
         return Survey(
             folder=self.folder,
             sheet=self.folder / SHEET_NAME,
             title=survey.title or self._resolved_folder.name,
             purpose=survey.purpose or "building",
-            images=images,
+            images=tuple(replace(job, conditions=conditions, design=design) for job in images),
+            conditions=conditions,
+            design=design,
+            weather_file=weather_file,
+            utc_offset_hours=survey.utc_offset_hours,
             camera=_camera(camera_table, response),
             model=radiation.model,
             criteria=criteria.use,
@@ -341,7 +353,8 @@ class _SheetLoader:
                     polygon=zone.polygon,
                     inputs=completed(here),
                     like=zone.like,
-                    load_a=zone.load_a,
+                    load_a=None if zone.load_a is None else zone.load_a.value,
+                    load_u_a=None if zone.load_a is None else zone.load_a.u,
                     rated_a=zone.rated_a,
                     ignore=zone.ignore,
                     role="foil" if zone.name in foils else zone.role,
@@ -461,6 +474,8 @@ class _SheetLoader:
         }
         odd = (ranges.plausibility_note(key, value) for key, value in sorted(seen, key=str))
         notes.extend(note for note in odd if note is not None)
+        if survey.purpose == "electrical":
+            notes.extend(_electrical_notes(images))
         return tuple(notes)
 
 
@@ -489,6 +504,28 @@ def _assumption_notes(images: Sequence[ImageJob]) -> list[str]:
         of = "" if count == len(images) else f" for {count} of {len(images)} images"
         notes.append(
             f"{key} was not told{of}: {value}{'' if unit == '1' else f' {unit}'} is assumed."
+        )
+    return notes
+
+
+def _electrical_notes(images: Sequence[ImageJob]) -> list[str]:
+    """Point out loads above the rating, and a wind that is told but not used."""
+    notes = [
+        f'Zone "{zone.name}" of {image.file} carries {zone.load_a:g} A, more than its rated '
+        f"{zone.rated_a:g} A."
+        for image in images
+        for zone in image.zones
+        if zone.load_a is not None and zone.rated_a is not None and zone.load_a > zone.rated_a
+    ]
+    windy = [
+        image.file
+        for image in images
+        if "wind_m_s" in image.inputs.values and image.inputs.outdoors is None
+    ]
+    if windy:
+        notes.append(
+            f"wind_m_s is told and not used: write outdoors = true where the parts stand in the "
+            f"open ({_listed(windy)})."
         )
     return notes
 

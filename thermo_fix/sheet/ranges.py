@@ -6,6 +6,7 @@ Each function returns None for a good value, else the words that go behind ``key
 from collections.abc import Callable
 
 from thermo_fix.constants import ZERO_CELSIUS_K
+from thermo_fix.thermal.load import EXPONENT_RANGE
 
 HOTTEST_C = 3000.0
 """degC. Beyond any surface that a long-wave camera is pointed at."""
@@ -16,6 +17,11 @@ _NOT_ABOVE_VALUE = {
     "window.transmittance",
     "humidity",
     "distance_m",
+    "load_a",
+    "height_m",
+    "design.humidity",
+    "design.degree_days_k",
+    "conditions.u_value",
 }
 """Positive quantities: a standard uncertainty above the value would say nothing is known."""
 
@@ -25,6 +31,7 @@ _FRACTIONS = {
     "window.transmittance",
     "window.reflectance",
     "humidity",
+    "design.humidity",
 }
 
 
@@ -117,6 +124,37 @@ def _wind(value: float) -> str | None:
     return None if 0.0 <= value <= 150.0 else "a wind speed is between 0 and 150 m/s"
 
 
+def _height(value: float) -> str | None:
+    return None if 0.0 < value <= 200.0 else "a height is above 0 and at most 200 m"
+
+
+def _design_humidity(value: float) -> str | None:
+    if value == 0.0:
+        return "a design humidity lies above 0; 0.5 is 50 %"
+    return _humidity(value)
+
+
+def _degree_days(value: float) -> str | None:
+    if 0.0 < value <= 15_000.0:
+        return None
+    return "heating degree days of a year lie above 0 and are at most 15000 K day"
+
+
+def _u_value(value: float) -> str | None:
+    return None if 0.02 <= value <= 10.0 else "a U-value is between 0.02 and 10 W m-2 K-1"
+
+
+def _load_exponent(value: float) -> str | None:
+    low, high = EXPONENT_RANGE
+    if low <= value <= high:
+        return None
+    return f"an exponent of the load lies between {low:g} and {high:g}; published are 1.5 to 2"
+
+
+def _load(value: float) -> str | None:
+    return None if value >= 0.0 else "a load must not be below zero; write it in amperes"
+
+
 def _temperature(value: float) -> str | None:
     if value < -ZERO_CELSIUS_K:
         return f"a temperature is at least -{ZERO_CELSIUS_K} degC (absolute zero); write degC"
@@ -134,4 +172,10 @@ _CHECKS: dict[str, Callable[[float], str | None]] = {
     "distance_m": _distance,
     "view_angle_deg": _angle,
     "wind_m_s": _wind,
+    "load_exponent": _load_exponent,
+    "load_a": _load,
+    "height_m": _height,
+    "design.humidity": _design_humidity,
+    "design.degree_days_k": _degree_days,
+    "conditions.u_value": _u_value,
 }

@@ -13,7 +13,8 @@ from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Pla
 from pydantic import model_validator as check_whole
 from pydantic_core import PydanticCustomError
 
-from thermo_fix.records import ModelName, PixelUnit, Purpose, TemperatureUnit
+from thermo_fix.limits import UnknownLimit, find_limit, stated_limit
+from thermo_fix.records import Limit, ModelName, PixelUnit, Purpose, Side, TemperatureUnit
 from thermo_fix.sheet import files, ranges, zones
 from thermo_fix.sheet.lines import KeyPath
 from thermo_fix.surfaces import Surface, UnknownSurface, find_surface
@@ -130,6 +131,19 @@ def _surface(raw: object) -> Surface:
     try:
         return find_surface(_name(raw))
     except UnknownSurface as error:
+        raise wrong(str(error)) from None
+
+
+def _limit(raw: object) -> Limit:
+    if isinstance(raw, int | float) and not isinstance(raw, bool):
+        degrees = _number(raw)
+        problem = ranges.range_problem("limit", degrees)
+        if problem is not None:
+            raise wrong(problem)
+        return stated_limit(degrees)
+    try:
+        return find_limit(_name(raw))
+    except UnknownLimit as error:
         raise wrong(str(error)) from None
 
 
@@ -334,6 +348,12 @@ Humidity = Annotated[Quantity, _quantity_checked("humidity"), _PLAIN]
 Distance = Annotated[Quantity, _quantity_checked("distance_m"), _PLAIN]
 ViewAngle = Annotated[Quantity, _quantity_checked("view_angle_deg"), _PLAIN]
 WindSpeed = Annotated[Quantity, _quantity_checked("wind_m_s"), _PLAIN]
+LoadExponent = Annotated[Quantity, _quantity_checked("load_exponent"), _PLAIN]
+Load = Annotated[Quantity, _quantity_checked("load_a"), _PLAIN]
+Height = Annotated[Quantity, _quantity_checked("height_m"), _PLAIN]
+DesignHumidity = Annotated[Quantity, _quantity_checked("design.humidity"), _PLAIN]
+DegreeDays = Annotated[Quantity, _quantity_checked("design.degree_days_k"), _PLAIN]
+UValue = Annotated[Quantity, _quantity_checked("conditions.u_value"), _PLAIN]
 Transmittance = Annotated[Quantity, _quantity_checked("transmittance"), _PLAIN]
 Reflectance = Annotated[Quantity, _quantity_checked("window.reflectance"), _PLAIN]
 
@@ -387,6 +407,13 @@ class SceneKeys(Table):
     indoor_c: AirTemperature | None = None
     outdoor_c: AirTemperature | None = None
     wind_m_s: WindSpeed | None = None
+    side: Annotated[Side, _one_of("inside", "outside")] | None = None
+    height_m: Height | None = None
+    outdoors: Flag | None = None
+    load_exponent: LoadExponent | None = None
+    target_load_a: PositiveNumber | None = None
+    limit: Annotated[Limit, PlainValidator(_limit)] | None = None
+    design_air_c: TemperatureNumber | None = None
     transmittance: Transmittance | None = None
     window: Window | None = None
 
@@ -401,6 +428,11 @@ class SurveyTable(Table):
     purpose: Annotated[Purpose, _one_of("building", "electrical")] | None = None
     date: Annotated[calendar.date, PlainValidator(_date)] | None = None
     surveyor: OneLine = ""
+    weather: FileName | None = None
+    utc_offset_hours: (
+        Annotated[Number, _within(-14.0, 14.0, "an offset from UTC is between -14 and 14 hours")]
+        | None
+    ) = None
     temperature_unit: Annotated[TemperatureUnit, _one_of("celsius", "fahrenheit")] = "celsius"
 
 
@@ -486,13 +518,49 @@ class CriteriaTable(Table):
     settings: Annotated[dict[str, float], PlainValidator(_settings)] = {}
 
 
+class ConditionsTable(Table):
+    """``[conditions]``: the weather and the building at the survey."""
+
+    rain: Flag | None = None
+    sun_hours_since: NonNegativeNumber | None = None
+    steady_hours: NonNegativeNumber | None = None
+    pressure_difference_pa: (
+        Annotated[
+            Number, _within(-1000.0, 1000.0, "a pressure difference is within 1000 Pa; write Pa")
+        ]
+        | None
+    ) = None
+    u_value: UValue | None = None
+
+
+class DesignTable(Table):
+    """``[design]``: conditions for which a building is judged besides those of the survey."""
+
+    indoor_c: AirTemperature | None = None
+    humidity: DesignHumidity | None = None
+    outdoor_c: AirTemperature | None = None
+    degree_days_k: DegreeDays | None = None
+    climate: OneLine = ""
+
+    @check_whole(mode="after")
+    def _sound(self) -> "DesignTable":
+        indoor, outdoor = self.indoor_c, self.outdoor_c
+        if indoor is not None and outdoor is not None and not indoor.value > outdoor.value:
+            raise wrong(
+                f"it must lie below indoor_c = {indoor.value:g}; mould and heat loss are judged "
+                "for a cold day",
+                "outdoor_c",
+            )
+        return self
+
+
 class ZoneTable(SceneKeys):
     """``[[image.zone]]``."""
 
     name: Name
     polygon: Annotated[tuple[tuple[float, float], ...], PlainValidator(_polygon)]
     like: Name | None = None
-    load_a: NonNegativeNumber | None = None
+    load_a: Load | None = None
     rated_a: PositiveNumber | None = None
     ignore: Flag = False
     role: Annotated[Literal["foil", "tape"], _one_of("foil", "tape")] | None = None
@@ -516,6 +584,8 @@ TABLES: dict[str, type[Table]] = {
     "scene": SceneKeys,
     "detect": DetectTable,
     "criteria": CriteriaTable,
+    "conditions": ConditionsTable,
+    "design": DesignTable,
 }
 """Tables that stand once at the top of the sheet."""
 
