@@ -8,10 +8,10 @@ from numpy.typing import NDArray
 
 from thermo_fix import cautions
 from thermo_fix.correct.inputs import Models, equation_of, fill_sky, with_input
+from thermo_fix.correct.kernel import planes_of
 from thermo_fix.correct.reference_zone import foil_temperature
 from thermo_fix.errors import ImageError
 from thermo_fix.radiometry.air import STRETCHED_BEYOND_M
-from thermo_fix.radiometry.path import correction_map
 from thermo_fix.radiometry.surface import STEEP_VIEW_DEG
 from thermo_fix.records import (
     Camera,
@@ -23,7 +23,6 @@ from thermo_fix.records import (
 )
 from thermo_fix.uncertainty.equation import MeasurementEquation
 
-_UNCERTAINTY_NODES = 2048
 _LOW_EMISSIVITY = 0.6
 
 
@@ -83,10 +82,7 @@ def correct_frame(
                 f"{job.file}: its emissivity file has values that are not above 0 and at most 1; "
                 "correct the file or give one number"
             )
-    surface_k = _surface_plane(
-        reading_k, labels, equations, models, emissivity_planes, reflected_planes
-    )
-    uncertainty_k = _uncertainty_plane(
+    surface_k, uncertainty_k = _corrected_planes(
         reading_k, labels, equations, emissivity_planes, reflected_planes
     )
     uncertainty_k[np.isnan(surface_k)] = np.nan
@@ -142,82 +138,54 @@ def _planes_by_label(
     return found
 
 
-def _surface_plane(
+def _corrected_planes(
     reading_k: NDArray[np.float32],
     labels: LabelArray,
     equations: list[MeasurementEquation],
-    models: Models,
     emissivity_planes: Mapping[int, NDArray[np.float32]],
     reflected_planes: Mapping[int, NDArray[np.float32]],
-) -> NDArray[np.float32]:
-    # One affine map for each label: a look-up of two numbers per pixel, then one inversion.
-    gains = np.empty(len(equations), np.float32)
-    offsets = np.empty(len(equations), np.float32)
+) -> tuple[NDArray[np.float32], NDArray[np.float32]]:
+    surface = np.full(reading_k.shape, np.nan, np.float32)
+    u = np.full(reading_k.shape, np.nan, np.float32)
     for label, equation in enumerate(equations):
-        if equation.emissivity_is_plane or equation.reflected_is_plane:
-            gains[label], offsets[label] = np.nan, np.nan
+        # The rest of the image is done whole; a zone only within the rows and columns it spans.
+        box = (slice(None), slice(None)) if label == 0 else _span(labels, label)
+        if box is None:
             continue
-        affine = correction_map(equation.path(), equation.recorded, models.model)
-        gains[label], offsets[label] = affine.gain, affine.offset
-    exitance = models.model.exitance(reading_k)
-    if len(equations) == 1:
-        surface = np.asarray(models.model.temperature(gains[0] * exitance + offsets[0]))
-    else:
-        surface = np.asarray(models.model.temperature(gains[labels] * exitance + offsets[labels]))
-    for label in sorted({*emissivity_planes, *reflected_planes}):
-        here = labels == label
-        surface[here] = equations[label].temperature_k(
-            reading_k[here],
-            emissivity=_part(emissivity_planes.get(label), here),
-            reflected_c=_part(reflected_planes.get(label), here),
-        )
-    return surface.astype(np.float32, copy=False)
-
-
-def _uncertainty_plane(
-    reading_k: NDArray[np.float32],
-    labels: LabelArray,
-    equations: list[MeasurementEquation],
-    emissivity_planes: Mapping[int, NDArray[np.float32]],
-    reflected_planes: Mapping[int, NDArray[np.float32]],
-) -> NDArray[np.float32]:
-    result = np.full(reading_k.shape, np.nan, np.float32)
-    for label, equation in enumerate(equations):
-        here = slice(None) if len(equations) == 1 else labels == label
-        readings = reading_k[here]
+        readings = reading_k[box]
         if label in emissivity_planes or label in reflected_planes:
-            result[here] = equation.u_k(
-                readings,
-                emissivity=_part(emissivity_planes.get(label), here),
-                reflected_c=_part(reflected_planes.get(label), here),
+            emissivity = _part(emissivity_planes.get(label), box)
+            reflected_c = _part(reflected_planes.get(label), box)
+            new = np.asarray(
+                equation.temperature_k(readings, emissivity=emissivity, reflected_c=reflected_c),
+                np.float32,
             )
-        elif readings.size:
-            result[here] = _uncertainty_by_reading(readings, equation)
-    return result
+            new_u = np.asarray(
+                equation.u_k(readings, emissivity=emissivity, reflected_c=reflected_c), np.float32
+            )
+        else:
+            new, new_u = planes_of(readings, equation)
+        if len(equations) == 1:
+            return new, new_u
+        here = labels[box] == label
+        np.copyto(surface[box], new, where=here)
+        np.copyto(u[box], new_u, where=here)
+    return surface, u
 
 
-def _uncertainty_by_reading(
-    readings: NDArray[np.float32], equation: MeasurementEquation
-) -> NDArray[np.float32]:
-    # With uniform inputs the uncertainty is a smooth function of the reading alone: the analytic
-    # formula is evaluated on a fine grid of readings and looked up.
-    finite = readings if np.isfinite(readings).all() else readings[np.isfinite(readings)]
-    if finite.size == 0:
-        return np.full(readings.shape, np.nan, np.float32)
-    low, high = float(finite.min()), float(finite.max())
-    step = max((high - low) / (_UNCERTAINTY_NODES - 1), 1e-6)
-    nodes = low + step * np.arange(_UNCERTAINTY_NODES + 1)
-    table = np.asarray(equation.u_k(nodes), np.float32)
-    with np.errstate(invalid="ignore"):
-        position = (readings - np.float32(low)) * np.float32(1.0 / step) + np.float32(0.5)
-        index = np.nan_to_num(position, copy=False).astype(np.int32)
-    return np.asarray(table[index])
+def _span(labels: LabelArray, label: int) -> tuple[slice, slice] | None:
+    """Return the rows and columns that a label spans."""
+    here = labels == label
+    rows, columns = np.flatnonzero(here.any(axis=1)), np.flatnonzero(here.any(axis=0))
+    if len(rows) == 0:
+        return None
+    return slice(rows[0], rows[-1] + 1), slice(columns[0], columns[-1] + 1)
 
 
 def _part(
-    plane: NDArray[np.float32] | None, here: slice | NDArray[np.bool_]
+    plane: NDArray[np.float32] | None, box: tuple[slice, slice]
 ) -> NDArray[np.float32] | None:
-    return None if plane is None else plane[here]
+    return None if plane is None else plane[box]
 
 
 def _cautions(
