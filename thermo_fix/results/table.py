@@ -1,0 +1,85 @@
+"""The contents of ``findings.csv``: the findings, one a row."""
+
+import csv
+import math
+from pathlib import Path
+
+from thermo_fix.records import Finding, SurveyResult
+
+COLUMNS = (
+    "id",
+    "image",
+    "zone",
+    "sense",
+    "x0_px",
+    "y0_px",
+    "x1_px",
+    "y1_px",
+    "area_px",
+    "area_m2",
+    "extreme_degC",
+    "extreme_x_px",
+    "extreme_y_px",
+    "mean_degC",
+    "reference_kind",
+    "reference",
+    "reference_degC",
+    "delta_K",
+    "u_extreme_K",
+    "u_delta_K",
+    "grade",
+    "grade_probability_1",
+    "worse_probability_1",
+    "criterion",
+    "settle",
+    "cautions",
+)
+_FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")
+
+
+def write_table(path: Path, result: SurveyResult) -> None:
+    """Write the findings as UTF-8 CSV (RFC 4180), worst first.
+
+    A text that a spreadsheet would take for a formula is preceded by an apostrophe.
+    """
+    with path.open("w", encoding="utf-8", newline="") as stream:
+        writer = csv.writer(stream)
+        writer.writerow(COLUMNS)
+        for finding in result.findings:
+            writer.writerow(_row(finding))
+
+
+def _row(finding: Finding) -> list[str]:
+    return [
+        finding.id,
+        _text(finding.image),
+        _text(finding.zone or ""),
+        finding.sense,
+        *(str(edge) for edge in finding.bbox_px),
+        str(finding.area_px),
+        _number(finding.area_m2, 4),
+        _number(finding.extreme_c, 2),
+        str(finding.extreme_px[0]),
+        str(finding.extreme_px[1]),
+        _number(finding.mean_c, 2),
+        finding.reference_kind,
+        _text(finding.reference_name),
+        _number(finding.reference_c, 2),
+        _number(finding.delta_k, 2),
+        _number(finding.u_extreme_k, 3),
+        _number(finding.u_delta_k, 3),
+        finding.grade or "",
+        _number(finding.grade_probability, 3),
+        _number(finding.worse_probability, 3),
+        finding.criterion or "",
+        _text(finding.settle),
+        _text(" ".join(finding.cautions)),
+    ]
+
+
+def _number(value: float | None, digits: int) -> str:
+    return "" if value is None or not math.isfinite(value) else f"{value:.{digits}f}"
+
+
+def _text(text: str) -> str:
+    return f"'{text}" if text.startswith(_FORMULA_STARTS) else text
