@@ -17,10 +17,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from thermo_fix.records import (
+    Assessment,
     BudgetLine,
     Camera,
     Condition,
     DetectSettings,
+    Figure,
     Finding,
     Grade,
     Grading,
@@ -28,6 +30,7 @@ from thermo_fix.records import (
     ImageResult,
     Input,
     InputLine,
+    PixelBudget,
     Planes,
     Purpose,
     SceneInputs,
@@ -68,6 +71,48 @@ def make_planes(
     corrected[height - 14 :, : 20 + width // 12] = np.nan
     uncertainty = (1.0 + 0.02 * np.abs(corrected - base_c)).astype(np.float32)
     return Planes(recorded, corrected, uncertainty)
+
+
+def with_zones(planes: Planes, zones: Sequence[Zone]) -> Planes:
+    """The same planes with labels of rectangular zones and made-up budgets of a pixel."""
+    labels = np.zeros(planes.corrected_c.shape, np.int16)
+    budgets = []
+    nodes = np.linspace(float(np.nanmin(planes.recorded_c)), float(np.nanmax(planes.recorded_c)), 9)
+    for label, name in enumerate(("", *(zone.name for zone in zones))):
+        if label:
+            (x0, y0), _, (x1, y1), _ = zones[label - 1].polygon
+            labels[int(y0) : int(y1), int(x0) : int(x1)] = label
+        budgets.append(
+            PixelBudget(
+                name=name,
+                emissivity=0.95 - 0.01 * label,
+                reading_c=nodes,
+                parts_k={
+                    "camera calibration": np.full(9, 1.0),
+                    f"emissivity of {name or 'the rest'}": 0.01 * (nodes - nodes[0]),
+                    "noise": np.full(9, 0.06),
+                },
+                own=("noise",),
+            )
+        )
+    return replace(planes, labels=labels, budgets=tuple(budgets))
+
+
+def load_assessment() -> Assessment:
+    """What a trade might conclude; invented."""
+    return Assessment(
+        kind="load",
+        title="Load",
+        statement="The load was 62 A. At full load the difference would be about 90 K.",
+        figures=(
+            Figure("load", 62.0, 1.0, "A"),
+            Figure("difference at full load", 90.3, 8.0, "K", "exponent 1.6"),
+            Figure("share of the rated current", 0.62, None, "1"),
+            Figure("wind", None, None, "m/s"),
+        ),
+        cautions=("The exponent is common practice.",),
+        source="common practice, no source",
+    )
 
 
 def ellipse(
@@ -324,7 +369,11 @@ def electrical(
             extreme=36.81,
             delta=5.64,
             reference=("like component", "lug A"),
-            gradings=(like_grading(5.64, "plan"), air_grading(False)),
+            gradings=(
+                like_grading(5.64, "plan"),
+                air_grading(False),
+                replace(like_grading(19.2, "act"), scenario="full load"),
+            ),
             grade="plan",
         ),
     )
@@ -361,8 +410,9 @@ def electrical(
         zone("lug B", 136, 66, 188, 130),
         zone("lug C", 226, 66, 276, 128),
     )
+    findings = (replace(findings[0], assessments=(load_assessment(),)), findings[1])
     planes = {
-        first: make_planes(320, 240, 27.0, lugs, seed=1),
+        first: with_zones(make_planes(320, 240, 27.0, lugs, seed=1), zones),
         second: make_planes(160, 120, 25.0, strip, seed=2),
     }
     images = (
@@ -386,6 +436,8 @@ def electrical(
             cautions=("The view angle was not told; 0° was assumed.",),
             findings=findings,
             zones=zones,
+            assessments=(replace(load_assessment(), title="Like zones: lugs"),),
+            pixel_m=0.00156,
         ),
         ImageResult(
             second,

@@ -221,7 +221,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
             print(f"    {name}")
     total = added(scores)
     print(line("total", total))
-    areas = np.quantile(total.area_ratios, [0.05, 0.5, 0.95]) if total.area_ratios else []
+    ratios = total.area_ratios or (float("nan"),)
+    areas = np.quantile(ratios, [0.05, 0.5, 0.95])
     print("area ratio, 5th, 50th, 95th percentile:", *(f"{ratio:.2f}" for ratio in areas))
     return 0
 

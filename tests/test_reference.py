@@ -246,7 +246,7 @@ def test_standard_uncertainty_of_a_patch_is_that_of_simulated_measurements() -> 
     table = np.array([box_exitance(each) for each in grid])
 
     def seen(at: np.ndarray) -> np.ndarray:
-        return np.interp(at, grid, table)
+        return np.asarray(np.interp(at, grid, table))
 
     # A stated accuracy of 2 K is the half-width of a rectangle, common to both readings.
     calibration = rng.uniform(-2.0, 2.0, count)
@@ -269,8 +269,9 @@ def test_standard_uncertainty_of_a_patch_is_that_of_simulated_measurements() -> 
     )
     assert solved.u == pytest.approx(float(drawn.std()), rel=0.03)
     low, high = np.quantile(drawn, [0.025, 0.975])
-    assert solved.interval[0] == pytest.approx(low, abs=0.1 * solved.u)
-    assert solved.interval[1] == pytest.approx(high, abs=0.1 * solved.u)
+    # First order is let stand while the mean is shifted by less than 0.15 u.
+    assert solved.interval[0] == pytest.approx(low, abs=0.2 * solved.u)
+    assert solved.interval[1] == pytest.approx(high, abs=0.2 * solved.u)
 
 
 def test_the_shared_calibration_counts_less_than_two_separate_ones() -> None:

@@ -67,10 +67,11 @@ def cut_by_frame() -> str:
 
 
 def too_small(width: int, height: int) -> str:
-    """Region narrower than three footprints."""
+    """Region of a target that is no wider than three footprints."""
     return (
-        f"The region is {width} x {height} pixels, less than 3 x 3 footprints across: too small "
-        "to measure, its extreme is understated."
+        f"The region is outlined at {width} x {height} pixels, blur of the optics included: its "
+        "target is no larger than 3 x 3 footprints, too small to measure, and its extreme is "
+        "understated."
     )
 
 
@@ -151,3 +152,67 @@ def low_load(share: float) -> str:
         f"Load was {share:.0%} of the rating, below 40 %: the grade may be understated, because "
         "the difference grows with the load."
     )
+
+
+def one_moment() -> str:
+    """Heat flow or temperature factor from one image."""
+    return (
+        "One image is one moment: walls lag behind the weather by hours. Repeat it on other nights "
+        "before a decision rests on it."
+    )
+
+
+def surface_resistance(rsi: float) -> str:
+    """Temperature factor measured under the surface resistance of the moment."""
+    return (
+        "The temperature factor was measured at one moment, under the surface resistance of that "
+        f"moment. Mould is judged for {rsi:g} m2 K/W (ISO 13788), as in corners and behind "
+        "furniture, where a surface is colder than one that stands free."
+    )
+
+
+def not_only_conduction() -> str:
+    """Cold surface that evaporation or incoming air may cool."""
+    return (
+        "Evaporation from a wet surface and outdoor air that is drawn in cool a surface too: then "
+        "neither the heat flow nor the temperature factor is that of the construction."
+    )
+
+
+def seen_from_outside() -> str:
+    """Heat flow from the outside of a wall."""
+    return (
+        "Seen from outside: wind and sky decide the heat flow, and neither is known well. An image "
+        "from inside is to be preferred."
+    )
+
+
+def windy(wind_m_s: float, most_m_s: float) -> str:
+    """Heat flow seen from outside in too much wind."""
+    return (
+        f"The wind of {wind_m_s:.1f} m/s is above {most_m_s:g} m/s: the wind law makes most of the "
+        "heat flow."
+    )
+
+
+def small_difference(difference_k: float, good_k: float) -> str:
+    """Heat flow at a small difference between indoors and outdoors."""
+    return (
+        f"Indoors and outdoors differ by {abs(difference_k):.1f} K only; from {good_k:g} K on a "
+        "U-value says more."
+    )
+
+
+def not_steady(hours: float | None, asked: float) -> str:
+    """Heat flow without steady conditions before."""
+    if hours is None:
+        return (
+            "It was not told for how long conditions had been steady (steady_hours): a U-value "
+            f"asks for {asked:g} h."
+        )
+    return f"Conditions had been steady for {hours:g} h; a U-value asks for {asked:g} h."
+
+
+def indoors_colder() -> str:
+    """Heat flows inwards."""
+    return "Indoors is colder than outdoors: heat flows inwards, and a loss is here a gain."

@@ -251,7 +251,7 @@ def demo(
         target = folder / name
         shutil.copytree(source, target)
         # The demo has a broken file on purpose, so that a failed image can be seen.
-        outcome = _run(target, None, False, RunOptions())
+        outcome = _run(target, None, False, RunOptions(jobs=None))
         status = max(status, EXIT_DONE if outcome == EXIT_SOME_FAILED else outcome)
     raise typer.Exit(status)
 

@@ -5,6 +5,7 @@ form. A criterion names a quantity, classes with their published wording, and ou
 """
 
 import difflib
+import math
 import tomllib
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
@@ -45,6 +46,9 @@ DEFAULT_USE: Mapping[Purpose, tuple[str, ...]] = {
 }
 """Criteria of a survey whose sheet names none."""
 
+LIMIT_CRITERION = "absolute-limit"
+"""Joins those of an electrical survey whose sheet names no criteria and states a limit."""
+
 _CRITERION_KEYS = {
     "id",
     "title",
@@ -57,6 +61,7 @@ _CRITERION_KEYS = {
     "settings",
     "class",
 }
+_SETTING_KEYS = {"meaning", "default"}
 _CLASS_KEYS = {"label", "text", "grade", "plus", *get_args(Comparison)}
 
 
@@ -244,15 +249,19 @@ def _criterion(table: Any, file: str, number: int) -> Criterion:
             f"{where}: quantity = {quantity!r} is not one of {', '.join(get_args(QuantityName))}"
         )
     senses = table.get("senses")
-    if not isinstance(senses, list) or not senses or not set(senses) <= set(get_args(Sense)):
+    if (
+        not isinstance(senses, list)
+        or not senses
+        or not all(each in get_args(Sense) for each in senses)
+    ):
         raise SheetError(f'{where}: senses must be a list of "hot" and "cold"')
     side = table.get("side")
     if side not in (None, "inside"):
         raise SheetError(f'{where}: side = {side!r}; leave it out or write "inside"')
-    settings = {
-        key: Setting(_text(value, "meaning", f"{where}, setting {key}"), value.get("default"))
-        for key, value in table.get("settings", {}).items()
-    }
+    given = table.get("settings", {})
+    if not isinstance(given, dict):
+        raise SheetError(f"{where}: settings must be a table")
+    settings = {key: _setting(value, f"{where}, setting {key}") for key, value in given.items()}
     classes = table.get("class")
     if not isinstance(classes, list) or not classes:
         raise SheetError(f"{where}: needs at least one [[criterion.class]]")
@@ -270,6 +279,20 @@ def _criterion(table: Any, file: str, number: int) -> Criterion:
     )
 
 
+def _setting(table: Any, where: str) -> Setting:
+    if not isinstance(table, dict):
+        raise SheetError(f"{where}: must be a table with a meaning and perhaps a default")
+    _no_unknown(table, _SETTING_KEYS, where)
+    default = table.get("default")
+    if default is not None and not _is_number(default):
+        raise SheetError(f"{where}: default = {default!r} must be a number")
+    return Setting(_text(table, "meaning", where), default if default is None else float(default))
+
+
+def _is_number(value: Any) -> bool:
+    return isinstance(value, int | float) and not isinstance(value, bool) and math.isfinite(value)
+
+
 def _grade_class(table: Any, settings: Mapping[str, Setting], where: str) -> GradeClass:
     if not isinstance(table, dict):
         raise SheetError(f"{where}: class must be a table")
@@ -281,11 +304,13 @@ def _grade_class(table: Any, settings: Mapping[str, Setting], where: str) -> Gra
     if isinstance(threshold, str):
         if threshold not in settings:
             raise SheetError(f'{where}: class refers to the setting "{threshold}", not defined')
-    elif isinstance(threshold, bool) or not isinstance(threshold, int | float):
+    elif not _is_number(threshold):
         raise SheetError(f"{where}: {conditions[0]} = {threshold!r} must be a number or a setting")
     else:
         threshold = float(threshold)
     plus = table.get("plus", "")
+    if not isinstance(plus, str):
+        raise SheetError(f"{where}: plus = {plus!r} must be the name of a setting")
     if plus and plus.removeprefix("-") not in settings:
         raise SheetError(f'{where}: plus refers to the setting "{plus}", not defined')
     grade = table.get("grade")

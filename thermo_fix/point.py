@@ -3,7 +3,7 @@
 import math
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, get_args
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -23,11 +23,15 @@ Quantity = float | tuple[float, float]
 
 _DEFAULT_ACCURACY_K = 2.0
 _DEFAULT_ACCURACY_FRACTION = 0.02
-_RANGES = {
-    "emissivity": (0.0, 1.0, "above 0 and at most 1"),
-    "transmittance": (0.0, 1.0, "above 0 and at most 1"),
-    "window.transmittance": (0.0, 1.0, "above 0 and at most 1"),
+_SMALLEST = 1e-3
+"""Emissivities and transmittances below it leave nothing to measure."""
+_ARGUMENTS = {
+    "window.transmittance": "window_transmittance",
+    "window.reflectance": "window_reflectance",
+    "window.temperature_c": "window_c",
+    "window.reflected_c": "window_reflected_c",
 }
+"""Arguments whose sheet key is spelt differently."""
 
 
 @dataclass(frozen=True)
@@ -84,7 +88,7 @@ def correct(
     reading_c
         What the pixels say, degC: a number or an array of any shape, above -273.15.
     emissivity
-        Above 0 and at most 1: a number, a pair (value, standard uncertainty), the name of a
+        0.001 to 1: a number, a pair (value, standard uncertainty), the name of a
         surface in the table, or an array of the shape of the reading.
     reflected_c
         Reflected apparent temperature, degC: a number, a pair, or an array; the air temperature
@@ -97,7 +101,8 @@ def correct(
     transmittance
         Of the air, instead of the formula.
     window_transmittance, window_reflectance, window_c, window_reflected_c
-        An infrared window in the path; its temperatures are 20 degC where not given.
+        An infrared window in the path, whose transmittance and reflectance add up to at most 1.
+        Where not given, it is as warm as the air and reflects a room of 20 degC.
     model, band_um, response
         ``total`` (Stefan-Boltzmann) or ``band`` (Planck over a box or a response curve).
     recorded_emissivity, recorded_reflected_c, recorded_air_c, recorded_transmittance
@@ -116,7 +121,7 @@ def correct(
     Raises
     ------
     DomainError
-        A quantity out of its range, named in the message.
+        A quantity out of its range or of another shape than the reading, named in the message.
     UnknownSurface
         A surface name that the table lacks; the message names the nearest.
 
@@ -128,34 +133,71 @@ def correct(
 
     """
     values = np.asarray(reading_c, dtype=np.float64)
-    if np.any(values <= -ZERO_CELSIUS_K):
-        raise DomainError("reading_c must be above -273.15 degC")
+    if np.any((values <= -ZERO_CELSIUS_K) | np.isinf(values)):
+        raise DomainError("reading_c must be finite and above -273.15 degC (or NaN: no reading)")
+    if model not in get_args(ModelName):
+        raise DomainError(f'model = {model!r} must be "total" or "band"')
+    for name, setting in (
+        ("recorded_emissivity", recorded_emissivity),
+        ("recorded_transmittance", recorded_transmittance),
+        ("recorded_reflected_c", recorded_reflected_c),
+        ("recorded_air_c", recorded_air_c),
+        ("accuracy_k", accuracy_k),
+        ("accuracy_fraction", accuracy_fraction),
+        ("noise_k", noise_k),
+    ):
+        _check(name, np.asarray(setting))
     variables: dict[str, Variable] = {}
     planes: dict[str, NDArray[np.float64]] = {}
+
+    def put(key: str, given: Any) -> None:
+        _put(variables, planes, values.shape, key, given)
+
     if isinstance(emissivity, str):
         surface = find_surface(emissivity)
         emissivity = (surface.emissivity, surface.u)
-    air = _pair("air_c", 20.0 if air_c is None else air_c)
-    _put(variables, planes, "emissivity", emissivity)
-    _put(variables, planes, "reflected_c", air if reflected_c is None else reflected_c)
-    _put(variables, planes, "air_c", air)
+    put("emissivity", emissivity)
+    put("air_c", _default("air_c") if air_c is None else air_c)
+    air = variables["air_c"]
+    if reflected_c is None:
+        assumed = "reflected_c" if air_c is None else "reflected_c.from_air"
+        reflected_c = (air.value, default_for(assumed).u or 0.0)
+    put("reflected_c", reflected_c)
     if transmittance is None and distance_m is None:
         transmittance = (1.0, 0.0)
+    put("humidity", _default("humidity") if humidity is None else humidity)
+    put("distance_m", (0.0, 0.0) if distance_m is None else distance_m)
     if transmittance is not None:
-        _put(variables, planes, "transmittance", transmittance)
-    else:
-        _put(variables, planes, "humidity", _default("humidity") if humidity is None else humidity)
-        _put(variables, planes, "distance_m", distance_m)
+        put("transmittance", transmittance)
+        del variables["humidity"], variables["distance_m"]
+    window = {
+        "window.reflectance": window_reflectance,
+        "window.temperature_c": window_c,
+        "window.reflected_c": window_reflected_c,
+    }
     if window_transmittance is not None:
-        _put(variables, planes, "window.transmittance", window_transmittance)
-        for key, value in (
-            ("window.reflectance", window_reflectance),
-            ("window.temperature_c", window_c),
-            ("window.reflected_c", window_reflected_c),
-        ):
-            _put(variables, planes, key, _default(key) if value is None else value)
+        put("window.transmittance", window_transmittance)
+        window["window.temperature_c"] = (
+            (air.value, default_for("window.temperature_c").u or 0.0)
+            if window_c is None
+            else window_c
+        )
+        for key, value in window.items():
+            put(key, _default(key) if value is None else value)
+        total = variables["window.transmittance"].value + variables["window.reflectance"].value
+        if window_reflectance is not None and total > 1.0 + 1e-12:
+            raise DomainError(
+                f"window_transmittance and window_reflectance add up to {total:g}, more than 1"
+            )
+    else:
+        for key, value in window.items():
+            if value is not None:
+                raise DomainError(f"{_ARGUMENTS[key]} needs window_transmittance beside it")
     chosen: RadiationModel = TotalModel()
-    band = band_model(band_um, None if response is None else tuple(response))
+    band = band_model(
+        band_um,
+        None if response is None else tuple((float(um), float(height)) for um, height in response),
+    )
     equation = MeasurementEquation(
         model=band if model == "band" else chosen,
         recorded=OpticalPath(
@@ -189,9 +231,13 @@ def correct(
 
 def _pair(key: str, given: Any) -> tuple[float, float]:
     if isinstance(given, tuple):
+        if len(given) != 2:
+            raise DomainError(f"{_shown(key)}: give a number, or (value, standard uncertainty)")
         value, u = (float(each) for each in given)
-        if u < 0.0 or math.isnan(u):
-            raise DomainError(f"{key}: a standard uncertainty must be zero or more, not {u:g}")
+        if not 0.0 <= u < math.inf:
+            raise DomainError(
+                f"{_shown(key)}: a standard uncertainty must be zero or more, not {u:g}"
+            )
         return value, u
     value = float(given)
     entry = default_for(key)
@@ -212,27 +258,48 @@ def _default(key: str) -> tuple[float, float]:
 def _put(
     variables: dict[str, Variable],
     planes: dict[str, NDArray[np.float64]],
+    shape: tuple[int, ...],
     key: str,
     given: Any,
 ) -> None:
-    if isinstance(given, np.ndarray) and given.ndim > 0:
-        planes[key] = given.astype(np.float64)
-        _check(key, planes[key])
+    if isinstance(given, list) or (isinstance(given, np.ndarray) and given.ndim > 0):
+        plane = np.asarray(given, dtype=np.float64)
+        if key not in ("emissivity", "reflected_c"):
+            raise DomainError(f"{_shown(key)} must be one number for the whole reading")
+        if plane.shape != shape:
+            raise DomainError(
+                f"{_shown(key)} has the shape {plane.shape}, the reading {shape}; "
+                "they must be the same"
+            )
+        _check(key, plane)
+        planes[key] = plane
         variables[key] = Variable(key, 0.0, _pair(key, 0.0)[1])
         return
     value, u = _pair(key, given)
     _check(key, np.asarray(value))
-    lower, upper = (1e-3, 1.0) if key in _RANGES else (-math.inf, math.inf)
-    if key in ("humidity", "window.reflectance"):
+    lower, upper = -math.inf, math.inf
+    if key.endswith(("emissivity", "transmittance")):
+        lower, upper = _SMALLEST, 1.0
+    elif key in ("humidity", "window.reflectance"):
         lower, upper = 0.0, 1.0
     variables[key] = Variable(key, value, u, lower=lower, upper=upper)
 
 
+def _shown(key: str) -> str:
+    return _ARGUMENTS.get(key, key)
+
+
 def _check(key: str, values: NDArray[np.float64]) -> None:
-    if key in _RANGES:
-        low, high, words = _RANGES[key]
-        if np.any(~((values > low) & (values <= high))):
-            shown = f" = {float(values):g}" if values.ndim == 0 else ""
-            raise DomainError(f"{key}{shown} must lie {words}")
-    elif np.any(~np.isfinite(values)):
-        raise DomainError(f"{key} must be a finite number")
+    """Refuse a quantity out of its range; what range that is follows from the name."""
+    if key.endswith(("emissivity", "transmittance")):
+        good, words = (values >= _SMALLEST) & (values <= 1.0), "between 0.001 and 1"
+    elif key.endswith(("humidity", "reflectance")):
+        good, words = (values >= 0.0) & (values <= 1.0), "between 0 and 1"
+    elif key.endswith("_c"):
+        good = np.isfinite(values) & (values >= -ZERO_CELSIUS_K)
+        words = "at or above -273.15 degC"
+    else:
+        good, words = np.isfinite(values) & (values >= 0.0), "at or above zero"
+    if not np.all(good):
+        shown = f" = {float(values):g}" if values.ndim == 0 else ""
+        raise DomainError(f"{_shown(key)}{shown} must lie {words}")

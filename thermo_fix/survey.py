@@ -9,7 +9,15 @@ from pathlib import Path
 from thermo_fix import cautions
 from thermo_fix.cluster import cluster_executor
 from thermo_fix.correct import radiation_models
-from thermo_fix.criteria import DEFAULT_USE, Criterion, built_in, load_criteria, parse_criteria
+from thermo_fix.correct.weather import with_weather
+from thermo_fix.criteria import (
+    DEFAULT_USE,
+    LIMIT_CRITERION,
+    Criterion,
+    built_in,
+    load_criteria,
+    parse_criteria,
+)
 from thermo_fix.errors import FolderError, SheetError
 from thermo_fix.grade import conditions
 from thermo_fix.pool import (
@@ -20,14 +28,16 @@ from thermo_fix.pool import (
     single_threads,
 )
 from thermo_fix.read import list_images
+from thermo_fix.read.moment import image_moment
 from thermo_fix.read.response import read_response
+from thermo_fix.read.weather import read_weather
 from thermo_fix.records import ImageResult, Survey, SurveyResult
 from thermo_fix.report import CriterionText, Pictures, write_report
 from thermo_fix.report.archive import pictures_from_files
 from thermo_fix.results import Staging, findings_document, write_document, write_table
 from thermo_fix.results.kept import load_kept
 from thermo_fix.results.workshop import Workshop
-from thermo_fix.sheet import load_survey
+from thermo_fix.sheet import assumption_notes, load_survey
 from thermo_fix.work import PLANE_NAMES, ImageTask, Outcome, plane_path, process_image
 
 RESULTS_NAME = "results"
@@ -45,8 +55,9 @@ Progress = Callable[[int, int, str], None]
 class RunOptions:
     """How a survey is run; none of it changes a number."""
 
-    jobs: int | None = None
-    """Worker processes; by default one for each core, or none for a small survey."""
+    jobs: int | None = 1
+    """Worker processes; None: one for each core, or none for a small survey. More than one needs
+    a script that may be imported again (``if __name__ == "__main__":``)."""
     cluster: str | None = None
     """Address of a Dask scheduler, instead of a pool of processes."""
     fresh: bool = False
@@ -79,9 +90,13 @@ def open_survey(folder: Path) -> Survey:
         raise FolderError(f"{folder}: {what}; give the folder that holds the images")
     found = [path.as_posix() for path in list_images(folder)]
     survey = load_survey(folder, found_files=found, known_criteria=_known_criteria)
+    if survey.weather_file is not None:
+        survey = _filled_by_weather(survey, survey.weather_file)
     if survey.criteria:
         return survey
     names = DEFAULT_USE[survey.purpose]
+    if survey.purpose == "electrical" and _states_limit(survey):
+        names = (*names, LIMIT_CRITERION)
     note = f"The sheet names no criteria; those for a survey of a {_WHAT[survey.purpose]} are used."
     return replace(survey, criteria=names, notes=(*survey.notes, note))
 
@@ -121,6 +136,11 @@ def run_survey(
     folder = Path(folder)
     target = folder / RESULTS_NAME if out is None else Path(out)
     survey = open_survey(folder)
+    if folder.resolve().is_relative_to(target.resolve()):
+        raise FolderError(
+            f"{target}: holds the survey, and results replace a folder as a whole; "
+            "give another --out"
+        )
     criteria = load_criteria(survey.criteria, survey.criteria_file)
     response_file = survey.camera.response_file
     response = None if response_file is None else read_response(response_file)
@@ -139,7 +159,9 @@ def run_survey(
         result = SurveyResult(
             survey=survey,
             images=tuple(outcome.result for _, outcome in outcomes),
-            conditions=conditions(survey),
+            conditions=conditions(
+                survey, [finding for _, done in outcomes for finding in done.result.findings]
+            ),
             cautions=cautions.general(survey.purpose),
         )
         document = findings_document(
@@ -164,6 +186,14 @@ def run_survey(
     return result
 
 
+def _states_limit(survey: Survey) -> bool:
+    return any(
+        inputs.limit is not None
+        for job in survey.images
+        for inputs in (job.inputs, *(zone.inputs for zone in job.zones))
+    )
+
+
 def criterion_text(criterion: Criterion) -> CriterionText:
     """Return a criterion as the report prints it."""
     return CriterionText(
@@ -173,6 +203,16 @@ def criterion_text(criterion: Criterion) -> CriterionText:
         classes=tuple((each.label, each.text, each.grade) for each in criterion.classes),
         note=criterion.gaps,
     )
+
+
+def _filled_by_weather(survey: Survey, file: Path) -> Survey:
+    log = read_weather(file, survey.utc_offset_hours)
+    moments = {job.file: job.taken or image_moment(job.path) for job in survey.images}
+    filled = with_weather(survey, log, moments)
+    # What the log fills is no longer assumed.
+    outdated = assumption_notes(survey.images)
+    kept = [note for note in filled.notes if note not in outdated]
+    return replace(filled, notes=(*kept, *assumption_notes(filled.images)))
 
 
 def _outcomes(

@@ -49,8 +49,19 @@ def grown_by_one(pixels: set[Pixel], shape: Pixel) -> set[Pixel]:
     return {near for pixel in pixels for near in neighbours(pixel, shape)}
 
 
-def shrunk_by_one(pixels: set[Pixel], shape: Pixel) -> set[Pixel]:
-    return {p for p in pixels if all(near in pixels for near in neighbours(p, shape))}
+def core_of(pixels: set[Pixel], shape: Pixel) -> set[Pixel]:
+    """Pixels with eight neighbours that belong too."""
+    return {p for p in pixels if sum(near in pixels for near in neighbours(p, shape)) == 9}
+
+
+def closed(pixels: set[Pixel]) -> set[Pixel]:
+    """Fill gaps of one or two pixels, on a plane without an edge."""
+
+    def around(pixel: Pixel) -> list[Pixel]:
+        return [(pixel[0] + i, pixel[1] + j) for i in (-1, 0, 1) for j in (-1, 0, 1)]
+
+    wide = {near for pixel in pixels for near in around(pixel)}
+    return {pixel for pixel in wide if all(near in wide for near in around(pixel))}
 
 
 def slow_plateaus(
@@ -65,9 +76,8 @@ def slow_plateaus(
         grown = flood(next(iter(left)), allowed, shape)
         left -= grown
         above = {(r, c) for r, c in grown_by_one(grown, shape) if values[r][c] > height / 2}
-        outline = above | shrunk_by_one(grown, shape)
-        # Closing: gaps of one or two pixels are filled.
-        outline = shrunk_by_one(grown_by_one(outline, shape), shape)
+        outline = above | core_of(grown, shape)
+        outline = closed(outline)
         has_block = any(
             all((r + i, c + j) in outline for i in range(3) for j in range(3)) for r, c in outline
         )
@@ -96,9 +106,7 @@ def plateaus(boxes: list[tuple[int, int, int, int]], height: float) -> NDArray[n
 
 @settings(max_examples=150, deadline=None)
 @given(boxes=blocks, min_area=st.integers(9, 30))
-def test_plateaus_against_flood_fill(
-    boxes: list[tuple[int, int, int, int]], min_area: int
-) -> None:
+def test_plateaus_against_flood_fill(boxes: list[tuple[int, int, int, int]], min_area: int) -> None:
     image = plateaus(boxes, 4.0)
     found = outline_regions(image, np.ones(SHAPE, bool), 1.0, min_area, 0.0)
     expected = slow_plateaus(image.tolist(), 4.0, SHAPE, min_area)

@@ -132,9 +132,7 @@ def test_transmittance_falls_with_distance_and_never_leaves_0_to_1(
 
 
 @settings(deadline=None)
-@given(
-    air_c=st.floats(10.0, 40.0), humidity=st.floats(0.1, 0.9), distance_m=st.floats(1.0, 200.0)
-)
+@given(air_c=st.floats(10.0, 40.0), humidity=st.floats(0.1, 0.9), distance_m=st.floats(1.0, 200.0))
 def test_more_vapour_less_transmittance(air_c: float, humidity: float, distance_m: float) -> None:
     # In dry cold air the formula has it the other way by a few 1e-4; above 1.3 g/m3, from
     # 10 degC and 0.1 on, it is as it should be.

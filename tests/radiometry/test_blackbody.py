@@ -43,7 +43,7 @@ def planck(wavelength_um: float, kelvin: float) -> float:
     """Spectral exitance, W m-2 um-1, with the constants of scipy alone."""
     metres = wavelength_um * 1e-6
     exponent = codata.h * codata.c / (metres * codata.k * kelvin)
-    return 2e-6 * math.pi * codata.h * codata.c**2 / (metres**5 * math.expm1(exponent))
+    return float(2e-6 * math.pi * codata.h * codata.c**2 / (metres**5 * math.expm1(exponent)))
 
 
 def integral(

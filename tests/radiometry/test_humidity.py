@@ -146,9 +146,7 @@ def test_dew_point_against_psychrolib(air_c: float, humidity: float) -> None:
 @pytest.mark.parametrize("air_c", [-15.0, 0.0, 12.0, 20.0, 35.0])
 @pytest.mark.parametrize("humidity", [0.2, 0.5, 0.9])
 def test_dew_point_against_real_humid_air(air_c: float, humidity: float) -> None:
-    reference = HAPropsSI(
-        "D", "T", air_c + codata.zero_Celsius, "P", codata.atm, "R", humidity
-    )
+    reference = HAPropsSI("D", "T", air_c + codata.zero_Celsius, "P", codata.atm, "R", humidity)
     assert float(dew_point_c(air_c, humidity)) == pytest.approx(
         reference - codata.zero_Celsius, abs=0.03
     )
@@ -222,9 +220,7 @@ def test_the_limit_of_condensation_is_the_dew_point() -> None:
 
 
 @settings(deadline=None)
-@given(
-    surface_c=st.floats(-20.0, 60.0), air_c=st.floats(-20.0, 60.0), humidity=st.floats(0.0, 1.0)
-)
+@given(surface_c=st.floats(-20.0, 60.0), air_c=st.floats(-20.0, 60.0), humidity=st.floats(0.0, 1.0))
 def test_surface_humidity_against_psychrolib(
     surface_c: float, air_c: float, humidity: float
 ) -> None:

@@ -335,9 +335,7 @@ def test_settings_that_were_right_are_left_alone(
 
 
 @settings(deadline=None)
-@given(
-    reading_k=surfaces_k, reflected_k=temperatures_k, air_k=temperatures_k, model=models
-)
+@given(reading_k=surfaces_k, reflected_k=temperatures_k, air_k=temperatures_k, model=models)
 def test_a_blackbody_through_nothing_reads_itself(
     reading_k: float, reflected_k: float, air_k: float, model: RadiationModel
 ) -> None:
@@ -417,11 +415,11 @@ def test_reading_up_surface_up(
 def test_emissivity_down_moves_away_from_the_reflected_temperature(
     surface_k: float, path: OpticalPath, model: RadiationModel, below: float
 ) -> None:
-    assume(abs(surface_k - path.reflected_k) > 1.0)
+    assume(abs(surface_k - float(path.reflected_k)) > 1.0)
     reading = apparent_temperature(surface_k, path, model)
     lower = replace(path, emissivity=float(path.emissivity) * below)
     moved = float(surface_temperature(reading, lower, IDENTITY_PATH, model))
-    if surface_k > path.reflected_k:
+    if surface_k > float(path.reflected_k):
         assert moved > surface_k
     else:
         # The colder a target is, the sooner no temperature explains it at all.
@@ -448,11 +446,11 @@ def test_transmittance_down_moves_away_from_the_air_temperature(
     # What counts is whether the radiation that leaves the surface is warmer than the air.
     leaving = surface_step(path.emissivity, model.exitance(path.reflected_k))
     leaving_k = float(model.temperature(leaving(model.exitance(surface_k))))
-    assume(abs(leaving_k - path.air_k) > 1.0)
+    assume(abs(leaving_k - float(path.air_k)) > 1.0)
     reading = apparent_temperature(surface_k, path, model)
     longer = replace(path, transmittance=float(path.transmittance) * below)
     moved = float(surface_temperature(reading, longer, IDENTITY_PATH, model))
-    if leaving_k > path.air_k:
+    if leaving_k > float(path.air_k):
         assert moved > surface_k
     else:
         assert moved < surface_k or math.isnan(moved)

@@ -161,7 +161,8 @@ def test_an_impossible_emissivity_is_refused(emissivity: float) -> None:
 
 
 @pytest.mark.parametrize(
-    ("index", "angle_deg"), [(0.9, 10.0), (math.nan, 10.0), (1.5, -1.0), (1.5, 90.0), (1.5, math.nan)]
+    ("index", "angle_deg"),
+    [(0.9, 10.0), (math.nan, 10.0), (1.5, -1.0), (1.5, 90.0), (1.5, math.nan)],
 )
 def test_an_impossible_view_is_refused(index: float, angle_deg: float) -> None:
     with pytest.raises(DomainError, match="angle"):

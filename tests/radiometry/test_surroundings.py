@@ -55,9 +55,7 @@ def test_an_overcast_sky_is_as_warm_as_the_air(air_c: float) -> None:
 
 
 @settings(deadline=None)
-@given(
-    air_c=st.floats(-10.0, 35.0), humidity=st.floats(0.3, 0.99), cloud=st.floats(0.0, 0.9)
-)
+@given(air_c=st.floats(-10.0, 35.0), humidity=st.floats(0.3, 0.99), cloud=st.floats(0.0, 0.9))
 def test_clouds_and_damp_warm_the_sky(air_c: float, humidity: float, cloud: float) -> None:
     sky = sky_temperature_c(air_c, humidity, cloud)
     assert sky < air_c

@@ -48,6 +48,7 @@ title = "Rope works hall, Marlhythe: heating-season walk-through"
 purpose = "building"
 date = 2026-01-20
 temperature_unit = "celsius"
+weather = "weather.csv"       # log of the works' own mast, in the time of the images
 
 [camera]
 pixel = "linear"              # the files hold whole numbers: kelvin = scale * count + offset
@@ -74,8 +75,7 @@ humidity = { value = 0.50, u = 0.03 }
 distance_m = { value = 2.8, u = 0.3 }
 view_angle_deg = 0.0
 indoor_c = { value = 20.5, u = 0.5 }
-outdoor_c = { value = -2.0, u = 0.5 }
-wind_m_s = 1.0
+# outdoor_c and, for the images outside, wind_m_s are not stated here: the weather log gives them.
 
 [detect]
 warm = true                   # heat that escapes, seen from outside
@@ -85,6 +85,19 @@ min_area_px = 12
 
 [criteria]
 use = ["iso13788-surface-factor", "dew-point", "surface-humidity", "house-difference"]
+
+[conditions]
+# The report checks these against its rules. The weather log answers for rain, sun and wind.
+steady_hours = 30             # heating on without a night setback since the day before yesterday
+pressure_difference_pa = 50   # outside minus inside, while the fan ran (IR_0106)
+
+[design]
+# The cold day for which moisture is judged: the hall let for an evening, at 60 % humidity.
+indoor_c = 20.0
+humidity = { value = 0.60, u = 0.02 }
+outdoor_c = -5.0
+degree_days_k = { value = 2900, u = 200 }   # heating degree days of a year
+climate = "Sellow valley, mean of ten heating seasons"
 
 # ---- outside, before sunrise -------------------------------------------------------------------
 
@@ -98,7 +111,8 @@ emissivity = { surface = "brick, red" }
 # A wall half faces the sky. With the air temperature and humidity below this gives the reflected
 # apparent temperature; a clear winter sky is far colder than the air.
 reflected_c = { sky = { cloud = 0.0, tilt_deg = 90.0, ground_c = -1.0 } }
-air_c = { value = -2.0, u = 0.5 }
+side = "outside"
+air_c = { value = -2.0, u = 0.5 }          # held before the wall; the log's mast is farther away
 humidity = { value = 0.80, u = 0.05 }
 distance_m = { value = 11.0, u = 0.5 }
 
@@ -108,7 +122,8 @@ asset = "community hall, east gable, first floor (Tar Kettle Row)"
 taken = 2026-01-20T06:49:00
 emissivity = { surface = "concrete, rough" }
 reflected_c = { sky = { cloud = 0.0, tilt_deg = 90.0, ground_c = -1.0 } }
-air_c = { value = -2.0, u = 0.5 }
+side = "outside"
+air_c = { value = -2.0, u = 0.5 }          # held before the wall; the log's mast is farther away
 humidity = { value = 0.80, u = 0.05 }
 distance_m = { value = 14.0, u = 0.5 }
 
@@ -119,7 +134,8 @@ taken = 2026-01-20T06:57:00
 note = "the panes mirror the sky: what they seem to show is not their temperature"
 emissivity = { surface = "brick, red" }
 reflected_c = { sky = { cloud = 0.0, tilt_deg = 90.0, ground_c = -1.0 } }
-air_c = { value = -2.0, u = 0.5 }
+side = "outside"
+air_c = { value = -2.0, u = 0.5 }          # held before the wall; the log's mast is farther away
 humidity = { value = 0.80, u = 0.05 }
 distance_m = { value = 12.0, u = 0.5 }
 
@@ -187,6 +203,39 @@ file = "IR_0109.tif"
 asset = "boiler room, flue wall"
 taken = 2026-01-20T08:11:00
 note = "the card came loose while this one was being written"
+"""
+
+WEATHER: Final = """\
+time,air_c,humidity,wind_m_s,rain,sun
+2026-01-19T06:00,-1.2,0.84,1.8,0,0
+2026-01-19T07:00,-1.3,0.84,1.6,0,0
+2026-01-19T08:00,-1.0,0.83,1.5,0,0
+2026-01-19T09:00,-0.4,0.81,1.4,0,0.2
+2026-01-19T10:00,0.3,0.77,1.7,0,0.6
+2026-01-19T11:00,1.0,0.73,2.0,0,0.8
+2026-01-19T12:00,1.6,0.70,2.2,0,0.9
+2026-01-19T13:00,1.9,0.69,2.3,0,0.9
+2026-01-19T14:00,1.8,0.69,2.1,0,0.7
+2026-01-19T15:00,1.4,0.71,1.9,0,0.3
+2026-01-19T16:00,0.7,0.74,1.6,0,0
+2026-01-19T17:00,0.2,0.76,1.4,0,0
+2026-01-19T18:00,-0.2,0.77,1.3,0,0
+2026-01-19T19:00,-0.5,0.78,1.2,0,0
+2026-01-19T20:00,-0.8,0.78,1.2,0,0
+2026-01-19T21:00,-1.0,0.79,1.1,0,0
+2026-01-19T22:00,-1.2,0.79,1.0,0,0
+2026-01-19T23:00,-1.4,0.79,1.1,0,0
+2026-01-20T00:00,-1.5,0.80,1.0,0,0
+2026-01-20T01:00,-1.6,0.80,0.9,0,0
+2026-01-20T02:00,-1.7,0.80,1.0,0,0
+2026-01-20T03:00,-1.8,0.80,1.1,0,0
+2026-01-20T04:00,-1.9,0.80,1.0,0,0
+2026-01-20T05:00,-2.0,0.80,0.9,0,0
+2026-01-20T06:00,-2.1,0.80,1.0,0,0
+2026-01-20T07:00,-2.0,0.80,1.0,0,0
+2026-01-20T08:00,-1.9,0.80,1.1,0,0
+2026-01-20T09:00,-1.6,0.79,1.3,0,0
+2026-01-20T10:00,-0.9,0.77,1.5,0,0.3
 """
 
 

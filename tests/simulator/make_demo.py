@@ -37,7 +37,9 @@ results with it. The two `VIS_*.png` are drawings.
 `building/`: a heating-season walk-through, eight images and a broken one. Outside: a bay without
 insulation, a slab edge, a street front whose windows mirror a cold sky. Inside: a cold corner, a
 damp patch, a leaking ceiling joint, a sound wall, and a wall with a piece of crumpled foil that
-measures the reflected apparent temperature. `IR_0109.tif` is cut short on purpose.
+measures the reflected apparent temperature. `weather.csv` is the log of a mast; from it come the
+outdoor temperature and the wind. The corner of `IR_0104.tif` passes as the morning was, and fails
+on the cold and humid day of the sheet's `[design]`. `IR_0109.tif` is cut short on purpose.
 
 `electrical/`: boards and a motor under load, seven images and a wrong one. A loose lug, cables that
 are unequally warm because their currents differ, a fuse without current, terminals behind an
@@ -76,6 +78,7 @@ def make_demo(demo_folder: Path = DEMO_FOLDER, truth_file: Path = TRUTH_FILE) ->
     _write_colour_picture(electrical / demo_electrical.BROKEN)
     truth["electrical"].append({"file": demo_electrical.BROKEN, "broken": "colour picture"})
     (building / "survey.toml").write_text(demo_building.SHEET, encoding="utf-8")
+    (building / "weather.csv").write_text(demo_building.WEATHER, encoding="utf-8")
     (electrical / "survey.toml").write_text(demo_electrical.SHEET, encoding="utf-8")
     write_pictures(building)
     (demo_folder / "README.md").write_text(README, encoding="utf-8")

@@ -11,7 +11,14 @@ from hypothesis import strategies as st
 from scipy import stats
 
 from thermo_fix.errors import DomainError
-from thermo_fix.uncertainty.variables import DRAWS, SEED, Variable, standard_deviates, uniform_draws
+from thermo_fix.uncertainty.variables import (
+    DRAWS,
+    SEED,
+    Shape,
+    Variable,
+    standard_deviates,
+    uniform_draws,
+)
 
 
 def test_same_name_same_draws_whatever_value_and_u() -> None:
@@ -55,9 +62,7 @@ def test_distribution_is_the_one_named(shape: str) -> None:
     value, u = 3.0, 0.25
     variable = Variable("x", value, u, "normal" if shape == "normal" else "rectangular")
     half = u * math.sqrt(3.0)
-    theory = (
-        stats.norm(value, u) if shape == "normal" else stats.uniform(value - half, 2.0 * half)
-    )
+    theory = stats.norm(value, u) if shape == "normal" else stats.uniform(value - half, 2.0 * half)
     draws = variable.draw()
     # Kolmogorov and Smirnov: 1.95/sqrt(n) is passed by chance once in 1000 times.
     assert stats.kstest(draws, theory.cdf).statistic < 1.95 / math.sqrt(DRAWS)
@@ -107,7 +112,7 @@ def test_no_emissivity_is_ever_drawn_outside_its_bounds(value: float, u: float, 
     draws = variable.draw(500)
     assert np.isfinite(draws).all()
     if variable.is_cut:
-        assert 1e-3 - 1e-12 <= draws.min()
+        assert draws.min() >= 1e-3 - 1e-12
         assert draws.max() <= 1.0 + 1e-12
     else:
         # Bounds beyond three standard uncertainties: reached by 0.3 % of the draws at most.
@@ -134,7 +139,7 @@ def test_value_outside_its_bounds_is_refused(value: float) -> None:
 
 @pytest.mark.parametrize("shape", ["normal", "rectangular"])
 def test_standard_deviates_are_those_of_the_variable(shape: str) -> None:
-    kind = "normal" if shape == "normal" else "rectangular"
+    kind: Shape = "normal" if shape == "normal" else "rectangular"
     draws = Variable("x", 5.0, 0.3, kind).draw()
     deviates = standard_deviates("x", DRAWS, SEED, kind)
     assert (draws - 5.0) / 0.3 == pytest.approx(deviates, abs=1e-9)

@@ -116,7 +116,14 @@ def equation_of(inputs: SceneInputs, camera: Camera, models: Models) -> Measurem
     values = inputs.values
     keys = [*_PATH_KEYS, *(("transmittance",) if "transmittance" in values else _AIR_KEYS)]
     keys += [key for key in values if key.startswith("window.")]
-    variables = {key: _variable(values[key]) for key in keys if key in values}
+    # The value of an input that stands in a file is NaN, which no variable may have.
+    in_files = {
+        *(() if inputs.emissivity_file is None else ("emissivity",)),
+        *(() if inputs.reflected_file is None else ("reflected_c",)),
+    }
+    variables = {
+        key: _variable(values[key]) for key in keys if key in values and key not in in_files
+    }
     if inputs.emissivity_file is not None:
         variables["emissivity"] = Variable(values["emissivity"].name, 0.0, values["emissivity"].u)
     if inputs.reflected_file is not None:

@@ -9,6 +9,7 @@ from bisect import bisect_left
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from datetime import datetime, timedelta
+from itertools import pairwise
 
 from thermo_fix.defaults import default_for
 from thermo_fix.records import (
@@ -30,7 +31,7 @@ BEFORE = timedelta(hours=24)
 SCOPE = "weather log"
 _OUTSIDE_KEYS = ("air_c", "humidity", "wind_m_s")
 _LISTED = 5
-_KEPT_HOURS = 1.0 / 3600.0
+_SECONDS_PER_HOUR = 3600.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,13 +43,28 @@ class Reading:
     """Standard uncertainty (k = 1): spread, resolution and sensor."""
 
 
-def log_at(log: WeatherLog, column: str, moment: datetime) -> Reading | str:
+class Columns:
+    """The columns of a weather log, each without its empty cells."""
+
+    def __init__(self, log: WeatherLog) -> None:
+        self.log = log
+        self.rows: dict[str, tuple[list[datetime], list[float]]] = {}
+        for name, values in log.columns.items():
+            pairs = [
+                (time, value)
+                for time, value in zip(log.times, values, strict=True)
+                if not math.isnan(value)
+            ]
+            self.rows[name] = ([time for time, _ in pairs], [value for _, value in pairs])
+
+
+def log_at(columns: Columns, column: str, moment: datetime) -> Reading | str:
     """Interpolate a column of a weather log.
 
     Parameters
     ----------
-    log
-        In the local time of ``moment``.
+    columns
+        Of a log in the local time of ``moment``.
     column
         ``air_c``, ``humidity`` or ``wind_m_s``.
     moment
@@ -60,15 +76,16 @@ def log_at(log: WeatherLog, column: str, moment: datetime) -> Reading | str:
         Or why there is none, in words that follow ``the weather log``.
 
     """
-    if column not in log.columns:
+    if column not in columns.rows:
         return f"has no column {column}"
-    times, values = _filled(log, column)
+    times, values = columns.rows[column]
     if not times or not times[0] <= moment <= times[-1]:
         return "does not cover the time"
     above = bisect_left(times, moment)
     below = above if times[above] == moment else above - 1
     if times[above] - times[below] > LONGEST_GAP:
-        return f"has a gap of more than {LONGEST_GAP.total_seconds() / 3600:g} hours there"
+        hours = LONGEST_GAP.total_seconds() / _SECONDS_PER_HOUR
+        return f"has a gap of more than {hours:g} hours there"
     share = 0.0
     if above != below:
         share = (moment - times[below]) / (times[above] - times[below])
@@ -81,14 +98,12 @@ def log_at(log: WeatherLog, column: str, moment: datetime) -> Reading | str:
     spread = 0.0
     if len(near) > 1:
         spread = math.sqrt(math.fsum((each - mean) ** 2 for each in near) / (len(near) - 1))
-    step = log.resolution[column] / math.sqrt(12.0)
+    step = columns.log.resolution[column] / math.sqrt(12.0)
     sensor = default_for(f"weather.{column}").u_for(value)
     return Reading(value, math.hypot(spread, step, sensor))
 
 
-def with_weather(
-    survey: Survey, log: WeatherLog, moments: Mapping[str, datetime | None]
-) -> Survey:
+def with_weather(survey: Survey, log: WeatherLog, moments: Mapping[str, datetime | None]) -> Survey:
     """Fill what the sheet does not state from a weather log.
 
     Parameters
@@ -107,6 +122,7 @@ def with_weather(
         could not fill.
 
     """
+    columns = Columns(log)
     jobs = []
     failed: dict[str, list[str]] = {}
     for job in survey.images:
@@ -118,7 +134,7 @@ def with_weather(
             jobs.append(job)
             continue
         reasons: dict[str, str] = {}
-        jobs.append(_filled_job(job, log, moment, reasons))
+        jobs.append(_filled_job(job, columns, moment, reasons))
         for key, reason in reasons.items():
             failed.setdefault(f"{reason}, and {key} stays not told", []).append(
                 f"{job.file} ({moment:%Y-%m-%d %H:%M})"
@@ -129,21 +145,21 @@ def with_weather(
         more = "" if len(files) <= _LISTED else f" and {len(files) - _LISTED} more"
         notes.append(f"{log.file}: the weather log {reason}: {shown}{more}.")
     known = sorted(moment for moment in moments.values() if moment is not None)
-    facts = _facts(log, known[0], known[-1]) if known else None
+    facts = _facts(columns, known[0], known[-1]) if known else None
     return replace(survey, images=tuple(jobs), notes=tuple(notes), weather=facts)
 
 
 def _filled_job(
-    job: ImageJob, log: WeatherLog, moment: datetime, reasons: dict[str, str]
+    job: ImageJob, columns: Columns, moment: datetime, reasons: dict[str, str]
 ) -> ImageJob:
     def filled(inputs: SceneInputs) -> SceneInputs:
         if inputs.told("outdoor_c") is None:
-            inputs = _with(inputs, "outdoor_c", log, moment, reasons)
+            inputs = _with(inputs, "outdoor_c", columns, moment, reasons)
         if inputs.inside is False:
             for key in _OUTSIDE_KEYS:
                 # A column that the log does not have is no failure.
-                if inputs.told(key) is None and key in log.columns:
-                    inputs = _with(inputs, key, log, moment, reasons)
+                if inputs.told(key) is None and key in columns.rows:
+                    inputs = _with(inputs, key, columns, moment, reasons)
         return inputs
 
     return replace(
@@ -154,14 +170,14 @@ def _filled_job(
 
 
 def _with(
-    inputs: SceneInputs, key: str, log: WeatherLog, moment: datetime, reasons: dict[str, str]
+    inputs: SceneInputs, key: str, columns: Columns, moment: datetime, reasons: dict[str, str]
 ) -> SceneInputs:
     column = "air_c" if key == "outdoor_c" else key
-    found = log_at(log, column, moment)
+    found = log_at(columns, column, moment)
     if isinstance(found, str):
         reasons[key] = found
         return inputs
-    note = f"{log.file}, interpolated to {moment:%Y-%m-%d %H:%M}"
+    note = f"{columns.log.file}, interpolated to {moment:%Y-%m-%d %H:%M}"
     new = Input(key, found.value, found.u, "measured", SCOPE, "measured", note)
     values = {**inputs.values, key: new}
     if key == "air_c":
@@ -187,30 +203,20 @@ def _following_air(inputs: SceneInputs, air: Input) -> dict[str, Input]:
     return followers
 
 
-def _filled(log: WeatherLog, column: str) -> tuple[list[datetime], list[float]]:
-    """Return the rows in which a column is not empty."""
-    pairs = [
-        (time, value)
-        for time, value in zip(log.times, log.columns[column], strict=True)
-        if not math.isnan(value)
-    ]
-    return [time for time, _ in pairs], [value for _, value in pairs]
-
-
 # ---------------------------------------------------------------- the survey as a whole
 
 
-def _facts(log: WeatherLog, first: datetime, last: datetime) -> WeatherFacts:
-    before, during = _departures(log, first, last)
-    dry, rain_seen = _hours_without(log, "rain", first, last)
-    sunless, sun_seen = _hours_without(log, "sun", first, last)
+def _facts(columns: Columns, first: datetime, last: datetime) -> WeatherFacts:
+    before, during = _departures(columns, first, last)
+    dry, rain_seen = _hours_without(columns, "rain", first, last)
+    sunless, sun_seen = _hours_without(columns, "sun", first, last)
     return WeatherFacts(
-        file=log.file,
+        file=columns.log.file,
         first=first,
         last=last,
         outdoor_before_k=before,
         outdoor_during_k=during,
-        wind_max_m_s=_greatest_wind(log, first, last),
+        wind_max_m_s=_greatest_wind(columns, first, last),
         dry_hours=dry,
         rain_seen=rain_seen,
         sunless_hours=sunless,
@@ -219,16 +225,16 @@ def _facts(log: WeatherLog, first: datetime, last: datetime) -> WeatherFacts:
 
 
 def _departures(
-    log: WeatherLog, first: datetime, last: datetime
+    columns: Columns, first: datetime, last: datetime
 ) -> tuple[float | None, float | None]:
     """Greatest departure of the outdoor air from its value at the first image, before and during.
 
     None where the log leaves out a part of that time.
     """
-    start = log_at(log, "air_c", first)
+    start = log_at(columns, "air_c", first)
     if isinstance(start, str):
         return None, None
-    times, values = _filled(log, "air_c")
+    times, values = columns.rows["air_c"]
 
     def greatest(begin: datetime, end: datetime) -> float | None:
         rows = [
@@ -236,7 +242,7 @@ def _departures(
         ]
         if not _covered([time for time, _ in rows], begin, end):
             return None
-        ends = [log_at(log, "air_c", moment) for moment in (begin, end)]
+        ends = [log_at(columns, "air_c", moment) for moment in (begin, end)]
         seen = [value for _, value in rows]
         seen += [each.value for each in ends if isinstance(each, Reading)]
         return max((abs(value - start.value) for value in seen), default=0.0)
@@ -246,17 +252,15 @@ def _departures(
 
 def _covered(times: Sequence[datetime], begin: datetime, end: datetime) -> bool:
     marks = [begin, *times, end]
-    return all(
-        later - earlier <= LONGEST_GAP for earlier, later in zip(marks, marks[1:], strict=False)
-    )
+    return all(later - earlier <= LONGEST_GAP for earlier, later in pairwise(marks))
 
 
-def _greatest_wind(log: WeatherLog, first: datetime, last: datetime) -> float | None:
-    if "wind_m_s" not in log.columns:
+def _greatest_wind(columns: Columns, first: datetime, last: datetime) -> float | None:
+    if "wind_m_s" not in columns.rows:
         return None
-    times, values = _filled(log, "wind_m_s")
+    times, values = columns.rows["wind_m_s"]
     seen = [value for time, value in zip(times, values, strict=True) if first <= time <= last]
-    ends = [log_at(log, "wind_m_s", moment) for moment in (first, last)]
+    ends = [log_at(columns, "wind_m_s", moment) for moment in (first, last)]
     if any(isinstance(each, str) for each in ends):
         return None
     seen += [each.value for each in ends if isinstance(each, Reading)]
@@ -264,15 +268,15 @@ def _greatest_wind(log: WeatherLog, first: datetime, last: datetime) -> float | 
 
 
 def _hours_without(
-    log: WeatherLog, column: str, first: datetime, last: datetime
+    columns: Columns, column: str, first: datetime, last: datetime
 ) -> tuple[float | None, bool]:
     """Hours up to the first image in which a column was 0, and whether it was not 0 before them.
 
     A row tells of the time since the row before. None where the log does not reach the survey.
     """
-    if column not in log.columns:
+    if column not in columns.rows:
         return None, False
-    times, values = _filled(log, column)
+    times, values = columns.rows[column]
     if not times or not _covered([time for time in times if first <= time <= last], first, last):
         return None, False
     # A row belongs to the survey when the time it tells of touches it.
@@ -289,6 +293,6 @@ def _hours_without(
         if reach - time > LONGEST_GAP:
             break
         if value > 0.0:
-            return (first - time).total_seconds() * _KEPT_HOURS, True
+            return (first - time).total_seconds() / _SECONDS_PER_HOUR, True
         reach = time
-    return (first - reach).total_seconds() * _KEPT_HOURS, False
+    return (first - reach).total_seconds() / _SECONDS_PER_HOUR, False

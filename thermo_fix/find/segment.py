@@ -102,13 +102,15 @@ def grown_outline(excess: NDArray[np.float32], grown: MaskArray, level: float) -
     near = cv2.dilate(grown.astype(np.uint8), _BLOCK) > 0
     with np.errstate(invalid="ignore"):
         above = near & (excess > level)
-    core = cv2.erode(grown.astype(np.uint8), _BLOCK) > 0
+    core = cv2.erode(grown.astype(np.uint8), _BLOCK, borderValue=0) > 0
     return above | core
 
 
 def _solid(mask: MaskArray, free: MaskArray) -> MaskArray:
     """Fill small gaps as far as pixels are free, and return the largest part."""
-    kept = cv2.morphologyEx((mask & free).astype(np.uint8), cv2.MORPH_CLOSE, _BLOCK)
+    # With a border of its own, so that a gap beside the edge of the image is no gap inside.
+    padded = np.pad((mask & free).astype(np.uint8), 1)
+    kept = cv2.morphologyEx(padded, cv2.MORPH_CLOSE, _BLOCK)[1:-1, 1:-1].copy()
     kept[~free] = 0
     count, parts, stats, _ = cv2.connectedComponentsWithStats(kept, connectivity=8)
     if count <= 2:

@@ -26,6 +26,8 @@ from thermo_fix.uncertainty.variables import SEED, Shape, standard_deviates
 
 NO_GRADE = "none"
 _DOUBT_WORTH_SETTLING = 0.02
+_GAIN_WORTH_NAMING = 0.01
+"""A smaller change of a chance lies within the scatter of the draws."""
 _QUANTITY_WORDS = {
     "like_difference": "difference to the like component",
     "rise_over_air": "rise over the air",
@@ -118,7 +120,7 @@ def _grading(
     if estimate is None:
         lacking += measured.missing.get(criterion.quantity, ())
     if criterion.side == "inside" and measured.inside is None:
-        lacking += [key for key in ("air_c", "indoor_c", "outdoor_c") if key not in lacking]
+        lacking += [key for key in measured.missing.get("side", ("side",)) if key not in lacking]
     words = _QUANTITY_WORDS[criterion.quantity]
     if criterion.quantity in ("difference", "like_difference"):
         words = f"difference to {measured.finding.reference_name}"
@@ -206,7 +208,11 @@ def _settle(
     chances: Mapping[str, float],
     words: Mapping[str, VariableWords],
 ) -> str:
-    """Name the one input whose uncertainty, if halved, lowers the doubt most."""
+    """Name the one input whose uncertainty, if halved, lowers the doubt most.
+
+    So near to a limit that halving tells nothing with the best estimate where it is, it is the
+    input that moves the estimate most: knowing it better decides on which side it lies.
+    """
     doubt = 1.0 - max(chances.values())
     if doubt < _DOUBT_WORTH_SETTLING:
         return ""
@@ -220,4 +226,7 @@ def _settle(
         left = 1.0 - max(halved.values())
         if left < best_doubt:
             best_name, best_doubt = name, left
+    if doubt - best_doubt < _GAIN_WORTH_NAMING and estimate.contributions:
+        parts = estimate.contributions
+        best_name = max(parts, key=lambda name: abs(parts[name]))
     return words[best_name].remedy if best_name else ""

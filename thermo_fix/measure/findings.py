@@ -38,12 +38,10 @@ from thermo_fix.records import (
     Region,
     VariableWords,
 )
+from thermo_fix.thermal.load import LEAST_LOAD
 from thermo_fix.uncertainty.equation import MODEL
 from thermo_fix.uncertainty.estimate import Estimate
 
-LEAST_LOAD = 0.4
-"""Least load at inspection, as a share of the rating (NETA MTS 2019 practice; NFPA 70B:2023,
-7.4 - clause from memory)."""
 _LOW_EMISSIVITY = 0.6
 _NEAR_REFLECTED_K = 2.0
 
@@ -89,7 +87,8 @@ def assess_image(
     corrected: CorrectedFrame, regions: Sequence[MeasuredRegion], purpose: Purpose
 ) -> tuple[Assessment, ...]:
     """Return what the trade says of an image as a whole, or of groups of its zones."""
-    return _TRADES[purpose].image_assessments(corrected, regions)
+    said: tuple[Assessment, ...] = _TRADES[purpose].image_assessments(corrected, regions)
+    return said
 
 
 def _measure(
@@ -164,6 +163,8 @@ def _measure(
             reference=reference,
             difference=difference,
             where=where,
+            quantities=quantities,
+            missing=missing,
         )
     )
     own = _cautions(corrected, region, finding, extreme, difference)
@@ -296,7 +297,9 @@ def _cautions(
     if region.cut_by_frame and not region.whole_zone:
         found.append(cautions.cut_by_frame())
     width, height = _least_extent(region.mask)
-    if min(width, height) < MEASURABLE_FOOTPRINTS:
+    # The optics widen a target by about a pixel, and the find stage outlines none narrower than 3:
+    # what is outlined at 3 pixels is a smaller target.
+    if min(width, height) <= MEASURABLE_FOOTPRINTS:
         found.append(cautions.too_small(width, height))
     emissivity = inputs.values["emissivity"]
     if inputs.emissivity_file is None and emissivity.value < _LOW_EMISSIVITY:

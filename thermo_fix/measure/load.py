@@ -14,12 +14,12 @@ from thermo_fix.measure.warmth import (
     zone_of,
 )
 from thermo_fix.records import Assessment, Figure, Zone
+from thermo_fix.thermal.load import LEAST_LOAD
 from thermo_fix.uncertainty.estimate import Estimate
 
 FULL_LOAD = "full load"
 STATED_LOAD = "stated load"
 EQUAL_LOAD = "equal load"
-LOW_SHARE = 0.4
 SOURCE = (
     "dT2 = dT1 (I2/I1)^n: n = 2/(1 + m) from a heat loss as dT^(1 + m); published n of about 1.5 "
     "to 2 (Lyon, Orlove and Peters, Proc. SPIE 4020, 2000, from memory), 1.8 in IEEE C37.010 "
@@ -86,7 +86,7 @@ def load_extras(measured: Measured, warmth: Warmth) -> Extras:
             sentences.append(_scenario_sentence(scenario, target_a, warmth, other))
             figures += _scenario_figures(scenario, target_a, other)
             share = load_a / target_a
-            if share < LOW_SHARE:
+            if share < LEAST_LOAD:
                 factor = share**-warmth.exponent.value
                 notes.append(cautions.far_from_load(share, factor))
     equal = _equal_load(measured, warmth)
@@ -95,7 +95,8 @@ def load_extras(measured: Measured, warmth: Warmth) -> Extras:
         sentences.append(sentence)
         figures += more
         scenarios[EQUAL_LOAD] = {
-            "difference": _magnitude(difference),
+            # In the sense of the finding; what is left on the other side is no deficiency.
+            "difference": difference if measured.finding.sense == "hot" else _negative(difference),
             "like_difference": difference,
         }
     return Extras(
@@ -178,9 +179,7 @@ def _scenario_figures(scenario: str, target_a: float, state: Warmth) -> list[Fig
     return figures
 
 
-def _equal_load(
-    measured: Measured, warmth: Warmth
-) -> tuple[Estimate, str, list[Figure]] | None:
+def _equal_load(measured: Measured, warmth: Warmth) -> tuple[Estimate, str, list[Figure]] | None:
     """Compare with the like at one current, and say what the currents explain."""
     current, other, now = warmth.current, warmth.like_current, warmth.difference
     if not warmth.is_like or current is None or other is None or now is None:
@@ -196,8 +195,9 @@ def _equal_load(
     figures = [
         _figure("difference, equal load", left, "K", f"{current.value:g} A in both"),
         _figure("explained by the current", explained, "K"),
-        Figure("explained share", 100.0 * share, None, "%"),
     ]
+    if 0.0 <= share <= 1.0:
+        figures.append(Figure("explained share", 100.0 * share, None, "%"))
     sentence = (
         f"{name} carries {other.value:g} A: of the difference of {now.value:.1f} K the current "
         f"explains {explained.value:.1f} K, and at equal load {left.value:.1f} K "
@@ -212,9 +212,7 @@ def _equal_load(
     return left, sentence, figures
 
 
-def _magnitude(difference: Estimate) -> Estimate:
-    if difference.value >= 0.0:
-        return difference
+def _negative(difference: Estimate) -> Estimate:
     return Estimate(
         -difference.value,
         {name: -part for name, part in difference.contributions.items()},

@@ -15,6 +15,11 @@ from thermo_fix.uncertainty.estimate import Estimate
 from thermo_fix.uncertainty.variables import Variable
 
 
+SIDE = "side"
+"""Sheet key, and the name under which is kept what is lacking to tell the side of a surface."""
+_SIDE_KEYS = ("air_c", "indoor_c", "outdoor_c")
+
+
 @dataclass(frozen=True, slots=True)
 class Site:
     """What the sheet says of the air around a surface."""
@@ -60,6 +65,10 @@ def quantities_of(
     """
     quantities: dict[str, Estimate] = {"surface_c": extreme}
     missing: dict[str, tuple[str, ...]] = {}
+    if site.inside is None:
+        untold = tuple(key for key in _SIDE_KEYS if site.told(key) is None)
+        # All told, and the air is as near to the one as to the other.
+        missing[SIDE] = untold or (SIDE,)
     words: dict[str, VariableWords] = {}
     if difference is None:
         missing["difference"] = ("a reference",)

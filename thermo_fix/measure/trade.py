@@ -27,6 +27,10 @@ class Measured:
     """K."""
     where: str
     """Words for the zone or asset."""
+    quantities: Mapping[str, Estimate] = field(default_factory=dict)
+    """As the criteria compare them."""
+    missing: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
+    """Sheet keys that a quantity lacks, by its name."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,6 +1,7 @@
 """What the wind outdoors says of a finding."""
 
 import math
+from contextlib import suppress
 
 from thermo_fix.errors import DomainError
 from thermo_fix.measure.load import FULL_LOAD, targets_of
@@ -79,11 +80,9 @@ def wind_extras(measured: Measured, warmth: Warmth) -> Extras:
         parts.append(f"the {noun} would be {after.value:.1f} K (u = {u:.1f} K)")
     rated_a = targets_of(measured).get(FULL_LOAD)
     if rated_a is not None and warmth.current is not None:
-        try:
+        # Where that cannot be told the assessment of the load says why.
+        with suppress(DomainError):
             scenarios[FULL_LOAD_WITHOUT_WIND] = at_load(calm, rated_a).quantities()
-        except DomainError:
-            # The assessment of the load says why.
-            pass
     statement = (
         f"The wind of {wind.value:g} m/s cools: at {CALM_M_S:g} m/s {' and '.join(parts)}. The "
         "factors are a rule of thumb whose uncertainty grows with the wind."

@@ -168,9 +168,7 @@ def _cell(written: str, column: str, where: str) -> float:
     return value
 
 
-def _in_order(
-    found: _Rows, columns: Sequence[str], name: str, notes: Sequence[str]
-) -> WeatherLog:
+def _in_order(found: _Rows, columns: Sequence[str], name: str, notes: Sequence[str]) -> WeatherLog:
     said = list(notes)
     order = sorted(range(len(found.times)), key=lambda index: found.times[index])
     if order != list(range(len(order))):
@@ -194,9 +192,7 @@ def _in_order(
             )
             for place, column in enumerate(columns)
         },
-        resolution={
-            column: 10.0 ** -found.decimals[place] for place, column in enumerate(columns)
-        },
+        resolution={column: 10.0 ** -found.decimals[place] for place, column in enumerate(columns)},
         notes=tuple(said),
     )
 

@@ -1,12 +1,18 @@
 """What a trade concludes from a finding or an image, in words and rounded numbers."""
 
+import re
 from collections.abc import Sequence
+from typing import Final
 
 from thermo_fix.records import Assessment, Figure
 from thermo_fix.report.catalogue import Words
 from thermo_fix.report.formatting import COVERAGE, Measured, Units, known, unit_sign
 from thermo_fix.report.view import AssessmentView, FigureRow
 
+_ENOUGH: Final = 100
+"""Characters of a statement from which a card goes on to something else."""
+
+_SENTENCE_END: Final = re.compile(r"(?<=[.!?])\s+(?=[A-Z])")
 
 
 def assessment_views(
@@ -17,6 +23,7 @@ def assessment_views(
         AssessmentView(
             title=each.title,
             statement=each.statement,
+            short=_beginning(each.statement),
             figures=tuple(
                 FigureRow(figure.label, _value(figure, words, units), figure.note)
                 for figure in each.figures
@@ -26,6 +33,16 @@ def assessment_views(
         )
         for each in assessments
     )
+
+
+def _beginning(statement: str) -> str:
+    """Whole sentences, as many as say something: a first short one is not enough."""
+    taken = ""
+    for sentence in _SENTENCE_END.split(statement):
+        taken = f"{taken} {sentence}".strip()
+        if len(taken) >= _ENOUGH:
+            break
+    return taken
 
 
 def _value(figure: Figure, words: Words, units: Units) -> str:

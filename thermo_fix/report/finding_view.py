@@ -8,6 +8,7 @@ from thermo_fix.report.budget_view import budget_views
 from thermo_fix.report.catalogue import Words
 from thermo_fix.report.formatting import (
     COVERAGE,
+    Measured,
     Units,
     known,
     percent,
@@ -74,6 +75,7 @@ class FindingViews:
             reference=reference,
             reference_temperature=units.temperature(finding.reference_c),
             difference=units.difference(finding.delta_k, finding.u_delta_k),
+            gap=self._gap(finding),
             comparison=comparison,
             against=self._against(finding, reference),
             location=words("finding.location", x=finding.extreme_px[0], y=finding.extreme_px[1]),
@@ -110,10 +112,13 @@ class FindingViews:
 
     def _comparison(self, finding: Finding, reference: str) -> str:
         against = self._against(finding, reference)
-        if finding.delta_k is None or not known(finding.delta_k):
-            return against
-        size = self._units.difference(abs(finding.delta_k), finding.u_delta_k, sign=False)
+        size = self._gap(finding)
         return f"{size.text} {against}" if size else against
+
+    def _gap(self, finding: Finding) -> Measured | None:
+        if finding.delta_k is None:
+            return None
+        return self._units.difference(abs(finding.delta_k), finding.u_delta_k, sign=False)
 
     def _against(self, finding: Finding, reference: str) -> str:
         if finding.delta_k is None or not known(finding.delta_k):
@@ -165,9 +170,7 @@ class FindingViews:
     def _interval(self, finding: Finding) -> str:
         if finding.interval_c is None or not all(known(end) for end in finding.interval_c):
             return ""
-        low, high = (
-            self._units.fixed(self._units.from_celsius(c), 1) for c in finding.interval_c
-        )
+        low, high = (self._units.fixed(self._units.from_celsius(c), 1) for c in finding.interval_c)
         return self._words("finding.interval", low=low, high=with_unit(high, self._units.sign))
 
     def _area(self, finding: Finding) -> str:

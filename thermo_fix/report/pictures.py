@@ -144,8 +144,9 @@ def encode_pictures(planes: Planes, image: ImageResult, *, colour_map: str = "in
 def _labels_png(planes: Planes) -> bytes | None:
     if planes.labels is None:
         return None
-    many = int(planes.labels.max(initial=0)) > 255
-    return _png(planes.labels.astype(np.uint16 if many else np.uint8))
+    if int(planes.labels.max(initial=0)) > 255:
+        return _png(planes.labels.astype(np.uint16))
+    return _png(planes.labels.astype(np.uint8))
 
 
 def _budgets(planes: Planes) -> bytes:

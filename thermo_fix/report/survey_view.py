@@ -4,7 +4,7 @@ from collections.abc import Iterator, Sequence
 from typing import Final
 
 from thermo_fix import cautions
-from thermo_fix.records import Grade, ImageResult, InputLine, SurveyResult
+from thermo_fix.records import GRADES, Grade, ImageResult, InputLine, SurveyResult
 from thermo_fix.report.assessment_view import assessment_views
 from thermo_fix.report.camera_view import camera_rows
 from thermo_fix.report.catalogue import Words
@@ -15,6 +15,7 @@ from thermo_fix.report.view import (
     CriterionText,
     FileRow,
     FindingView,
+    GradeKey,
     ImageView,
     InputRow,
     Rank,
@@ -84,13 +85,11 @@ class SurveyViews:
             failed=tuple(self.image(image) for image in result.failed),
             findings=findings,
             conditions=result.conditions,
+            told=self._told(),
             untold=tuple(c.name for c in result.conditions if c.state == "not told"),
             criteria=self._criteria_texts(),
             cautions=self._cautions(),
-            files=tuple(
-                FileRow(image.file, words.of("status", image.status), image.sha256 or "")
-                for image in result.images
-            ),
+            files=tuple(self._file_row(image) for image in result.images),
             camera=camera_rows(result.survey.camera, words, self._units),
             settings=tuple(
                 SettingRow(key, self._units.shortest(value), words("origin.given"))
@@ -98,6 +97,33 @@ class SurveyViews:
             ),
             software=f"thermo_fix {self._version}",
             units=self._units,
+        )
+
+    def _told(self) -> tuple[tuple[str, tuple[str, ...]], ...]:
+        by_state: dict[str, dict[str, None]] = {"not met": {}, "not told": {}, "met": {}}
+        for each in self._result.conditions:
+            text = f"{each.name}: {each.value}" if each.value else each.name
+            by_state[each.state].setdefault(text)
+        return tuple((state, tuple(texts)) for state, texts in by_state.items() if texts)
+
+    def _file_row(self, image: ImageResult) -> FileRow:
+        ranks = [
+            -1 if finding.grade is None else GRADES.index(finding.grade)
+            for finding in image.findings
+        ]
+        worst = max(ranks, default=None)
+        grade: GradeKey | None = (
+            None if worst is None else "ungraded" if worst < 0 else GRADES[worst]
+        )
+        return FileRow(
+            number=self._image_numbers[image.file],
+            file=image.file,
+            title=image.asset or image.file,
+            status=self._words.of("status", image.status),
+            sha256=image.sha256 or "",
+            findings=len(image.findings),
+            grade=grade,
+            grade_word="" if grade is None else self._words.of("grade", grade),
         )
 
     def images(self) -> Iterator[ImageView]:
@@ -125,9 +151,7 @@ class SurveyViews:
         if not findings:
             return ()
         done = len(self._result.images) - len(self._result.failed)
-        acts, plans = (
-            sum(view.grade == grade for view in findings) for grade in ("act", "plan")
-        )
+        acts, plans = (sum(view.grade == grade for view in findings) for grade in ("act", "plan"))
         sentences = [
             words.count("headline.images", done)
             + " "

@@ -77,6 +77,8 @@ class AssessmentView:
 
     title: str
     statement: str
+    short: str
+    """The beginning of the statement, in whole sentences."""
     figures: tuple[FigureRow, ...]
     cautions: tuple[str, ...]
     source: str
@@ -137,6 +139,8 @@ class FindingView:
     reference: str
     reference_temperature: Measured | None
     difference: Measured | None
+    gap: Measured | None
+    """Size of the difference, without its sign."""
     comparison: str
     """Difference, its uncertainty and the reference in one phrase."""
     against: str
@@ -206,9 +210,15 @@ class ImageView:
 class FileRow:
     """One source file."""
 
+    number: int
     file: str
+    title: str
     status: str
     sha256: str
+    findings: int
+    grade: GradeKey | None
+    """Of its worst finding; None without findings."""
+    grade_word: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -259,6 +269,8 @@ class ReportView:
     failed: tuple[ImageView, ...]
     findings: tuple[FindingView, ...]
     conditions: tuple[Condition, ...]
+    told: tuple[tuple[str, tuple[str, ...]], ...]
+    """Conditions by state, for the head of the report; what is in doubt stands first."""
     untold: tuple[str, ...]
     """Names of the conditions that the survey was not told."""
     criteria: tuple[CriterionText, ...]

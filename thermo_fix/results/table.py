@@ -57,7 +57,7 @@ def _row(finding: Finding) -> list[str]:
         finding.sense,
         *(str(edge) for edge in finding.bbox_px),
         str(finding.area_px),
-        _number(finding.area_m2, 4),
+        _number(finding.area_m2, 6),
         _number(finding.extreme_c, 2),
         str(finding.extreme_px[0]),
         str(finding.extreme_px[1]),

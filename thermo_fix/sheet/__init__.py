@@ -6,7 +6,7 @@ opening an image; ``draft_sheet`` writes a first sheet; ``zone_mask``, ``label_z
 """
 
 from thermo_fix.sheet.draft import FileFacts, draft_sheet
-from thermo_fix.sheet.load import load_survey
+from thermo_fix.sheet.load import assumption_notes, load_survey
 from thermo_fix.sheet.schema import SHEET_NAME, SHEET_VERSION
 from thermo_fix.sheet.zones import check_polygon, label_zones, overlap_notes, zone_mask
 
@@ -14,6 +14,7 @@ __all__ = [
     "SHEET_NAME",
     "SHEET_VERSION",
     "FileFacts",
+    "assumption_notes",
     "check_polygon",
     "draft_sheet",
     "label_zones",

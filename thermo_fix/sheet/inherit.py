@@ -87,9 +87,7 @@ def merged(outer: Stated, inner: Stated) -> Stated:
     values.update(inner.values)
     emissivity = inner if "emissivity" in inner.values else outer
     reflected = inner if "reflected_c" in inner.values else outer
-    facts = {
-        key: getattr(outer if getattr(inner, key) is None else inner, key) for key in _FACTS
-    }
+    facts = {key: getattr(outer if getattr(inner, key) is None else inner, key) for key in _FACTS}
     return Stated(
         values,
         **facts,

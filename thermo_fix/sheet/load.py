@@ -463,7 +463,7 @@ class _SheetLoader:
                 "Photographs named in the sheet that are not in the folder: "
                 f"{_listed(self._missing_photos)}."
             )
-        notes.extend(_assumption_notes(images))
+        notes.extend(assumption_notes(images))
         notes.extend(_camera_notes(camera))
         seen = {
             (one.key, one.value)
@@ -485,8 +485,8 @@ def _listed(names: Sequence[str]) -> str:
     return shown if rest <= 0 else f"{shown} and {rest} more"
 
 
-def _assumption_notes(images: Sequence[ImageJob]) -> list[str]:
-    """One sentence for each key that was not told, with the images it concerns."""
+def assumption_notes(images: Sequence[ImageJob]) -> list[str]:
+    """Return one sentence for each key that was not told, with the images it concerns."""
     counts: Counter[str] = Counter()
     values: dict[str, set[float]] = {}
     for image in images:

@@ -22,6 +22,9 @@ from thermo_fix.errors import DomainError
 
 FloatArray = NDArray[np.float64]
 
+LEAST_LOAD = 0.4
+"""Least load at inspection, as a share of the rating (NETA MTS 2019 practice; NFPA 70B:2023,
+7.4 - clause from memory)."""
 EXPONENT_RANGE = (1.0, 2.5)
 """Exponents for which equation (1) is meant; wider than what is published."""
 

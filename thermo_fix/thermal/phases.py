@@ -1,4 +1,4 @@
-"""What unequal like parts say: a hot connection, an unbalanced load, a shared cause, an open circuit.
+"""What unequal like parts say: a hot connection, another load, a shared cause, no current.
 
 A joint of high resistance makes its heat in one place, and the heat fades along the conductor:
 a gradient. A greater current warms the whole length evenly, in proportion to I^n. A part through
@@ -38,27 +38,30 @@ class Gradient(NamedTuple):
     """How the temperature falls along a part, away from its warmest place."""
 
     drop_k: float
-    """From the warmest place to the farthest end, K; of the fitted curve."""
+    """From the warmest place to the farthest quarter of the part, K."""
     u_drop_k: float
-    """Standard uncertainty of the fit, K."""
+    """Standard uncertainty from the scatter of the profile, K."""
     decay_px: float
     """Distance over which the excess falls to 1/e, pixels; infinite for a straight fall."""
     warmest_px: float
     """Place of the warmest point along the axis, pixels from the start of the profile."""
 
 
-_FLAT = Gradient(0.0, math.inf, math.inf, 0.0)
+_UNKNOWN = Gradient(0.0, math.inf, math.inf, 0.0)
 _LEAST_POINTS = 6
+_FAR = 0.75
+"""Share of the greatest distance from the warmest place from which a point counts as far."""
 
 
 def fit_gradient(
     place_px: NDArray[np.float64], profile_k: NDArray[np.float64], noise_k: float = 0.0
 ) -> Gradient:
-    """Fit a decay away from the warmest place to a temperature profile along a part.
+    """Measure the fall of a temperature profile away from its warmest place.
 
-    T(s) = a + b exp(-|s - s0| / L): the temperature along a conductor that is heated at s0 and
-    cooled along its length (a fin); s0 is the warmest point of the smoothed profile, L is
-    searched, a and b follow by least squares.
+    The fall is read from the profile: its greatest mean of three points, minus the mean of the
+    points that are farthest from there. For the length over which it decays,
+    T(s) = a + b exp(-|s - s0| / L) is fitted, the temperature along a conductor that is heated
+    at s0 and cooled along its length (a fin): L is searched, a and b follow by least squares.
 
     Parameters
     ----------
@@ -67,7 +70,8 @@ def fit_gradient(
     profile_k
         (n,), temperature, K or degC.
     noise_k
-        Standard deviation of one point, K; the residuals of the fit count where they are larger.
+        Standard deviation of one point, K; the scatter from point to point counts where it is
+        larger.
 
     Returns
     -------
@@ -78,29 +82,32 @@ def fit_gradient(
     good = np.isfinite(profile_k)
     place, profile = place_px[good], profile_k[good]
     if len(place) < _LEAST_POINTS:
-        return _FLAT
-    padded = np.pad(profile, 1, mode="edge")
-    smooth = (padded[:-2] + padded[1:-1] + padded[2:]) / 3.0
-    warmest = float(place[int(np.argmax(smooth))])
+        return _UNKNOWN
+    smooth = np.convolve(profile, np.ones(3) / 3.0, mode="valid")
+    top = int(np.argmax(smooth)) + 1
+    warmest = float(place[top])
     distance = np.abs(place - warmest)
     reach = float(distance.max())
-    best: tuple[float, float, Gradient] | None = None
-    for decay in np.geomspace(1.5, 20.0 * reach, 40):
+    far = distance >= _FAR * reach
+    drop = float(smooth[top - 1] - profile[far].mean())
+    # Second differences leave out a slope; of white noise they have a variance of 6 sigma^2.
+    scatter = float(np.median(np.abs(np.diff(profile, 2)))) / 0.6745 / math.sqrt(6.0)
+    sigma = max(noise_k, scatter)
+    u_drop = sigma * math.sqrt(1.0 / 3.0 + 1.0 / np.count_nonzero(far))
+    return Gradient(max(drop, 0.0), u_drop, _decay_px(distance, profile, reach), warmest)
+
+
+def _decay_px(distance: NDArray[np.float64], profile: NDArray[np.float64], reach: float) -> float:
+    best, found = math.inf, math.inf
+    for decay in np.geomspace(1.0, 20.0 * reach, 60):
         shape = np.exp(-distance / decay)
         design = np.column_stack([np.ones_like(shape), shape])
         solution, _, rank, _ = np.linalg.lstsq(design, profile, rcond=None)
-        if rank < 2:
-            continue
         left = float(np.sum((profile - design @ solution) ** 2))
-        if best is not None and left >= best[0]:
-            continue
-        fall = 1.0 - math.exp(-reach / decay)
-        drop = float(solution[1]) * fall
-        sigma = max(math.sqrt(left / (len(place) - 2)), noise_k)
-        spread = math.sqrt(float(np.linalg.inv(design.T @ design)[1, 1]))
-        length = float(decay) if decay < 10.0 * reach else math.inf
-        best = (left, drop, Gradient(max(drop, 0.0), sigma * spread * fall, length, warmest))
-    return _FLAT if best is None else best[2]
+        if rank == 2 and left < best:
+            best, found = left, float(decay)
+    # A decay much longer than the part cannot be told from a straight line.
+    return found if found < 5.0 * reach else math.inf
 
 
 @dataclass(frozen=True, slots=True)
@@ -112,7 +119,7 @@ class Phase:
     """Of the part as a whole over the middle one of the group (of two: over the cooler), K."""
     u_excess_k: float
     peak_excess_k: float
-    """Of its warmest place over that of the middle one, K."""
+    """Of its warmest place over the middle one of the warmest places, K."""
     u_peak_excess_k: float
     gradient_k: float
     """Fall of temperature along it, away from its warmest place, K."""
@@ -272,6 +279,18 @@ def _alike(phases: Sequence[Phase], min_delta_k: float) -> Pattern:
             tuple(each.name for each in near),
             "the differences are not larger than their expanded uncertainty (k = 2)",
         )
+    spots = [
+        each for each in phases if _clear(each.peak_excess_k, each.u_peak_excess_k, min_delta_k)
+    ]
+    if spots:
+        names = tuple(each.name for each in spots)
+        return Pattern(
+            "cannot tell",
+            names,
+            f"as a whole they are alike, but {' and '.join(names)} {_has(names)} a place that is "
+            f"{spots[0].peak_excess_k:.1f} K warmer than that of its like, without a clear "
+            "gradient: look nearer",
+        )
     unlike = [
         each
         for each in phases
@@ -314,6 +333,10 @@ def _median_of_others(phases: Sequence[Phase], phase: Phase, name: str) -> float
     values = [getattr(other, name) for other in phases if other is not phase]
     known = [value for value in values if value is not None]
     return float(np.median(known)) if known else 0.0
+
+
+def _has(names: tuple[str, ...]) -> str:
+    return "has" if len(names) == 1 else "have"
 
 
 def _are(names: tuple[str, ...]) -> str:

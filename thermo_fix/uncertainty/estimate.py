@@ -16,10 +16,10 @@ from thermo_fix.uncertainty.propagation import (
     difference,
 )
 
-_LINEAR_U = 0.05
+_LINEAR_U = 0.02
 _LINEAR_SHIFT = 0.15
 _LINEAR_SKEW = 0.2
-"""First order is good enough while its u is within 5 % of Monte Carlo's, the mean is shifted by
+"""First order is good enough while its u is within 2 % of Monte Carlo's, the mean is shifted by
 less than 0.15 u and the middle of the 95 % interval by less than 0.2 u; the interval then misses
 by less than half a percent of coverage (the comparison of JCGM 101:2008, clause 8, but of the
 middle instead of both ends, so that a rectangular input alone does not set it off)."""

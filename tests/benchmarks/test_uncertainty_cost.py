@@ -1,0 +1,71 @@
+"""What the uncertainty plane costs, against the correction itself, in the same run.
+
+The correction itself is the formula, evaluated pixel by pixel: reading to exitance, the affine map
+of the path, exitance to temperature. ``correct_frame`` gives the surface temperature and its
+uncertainty at every pixel; what it takes beyond the formula is the price of the uncertainty.
+"""
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from tests.benchmarks.measure import cpu_seconds_of_many, report
+from tests.uncertainty.in_memory import scene_inputs, with_emissivity
+from thermo_fix.constants import ZERO_CELSIUS_K
+from thermo_fix.correct import correct_frame, radiation_models
+from thermo_fix.records import Camera, Encoding, Frame, ImageJob, ModelName, Zone
+from thermo_fix.sheet.zones import label_zones
+
+SHAPE = (480, 640)
+LIMIT = 2.0
+REPEATS = 10
+CAMERA = Camera(noise_k=0.05, accuracy_k=2.0, accuracy_fraction=0.02, nonuniformity_k=0.1)
+
+
+@pytest.mark.parametrize("zone_count", [1, 8])
+@pytest.mark.parametrize("model", ["total", "band"])
+def test_uncertainty_costs_at_most_twice_the_correction(model: ModelName, zone_count: int) -> None:
+    rng = np.random.default_rng(1)
+    celsius = np.linspace(5.0, 65.0, SHAPE[1]) + rng.normal(0.0, 0.05, SHAPE)
+    reading_k = (celsius + ZERO_CELSIUS_K).astype(np.float32)
+    inputs = scene_inputs(
+        emissivity=(0.93, 0.02),
+        reflected_c=(15.0, 1.0),
+        air_c=(18.0, 1.0),
+        humidity=(0.5, 0.05),
+        distance_m=(8.0, 0.4),
+    )
+    zones = tuple(
+        Zone(
+            f"zone {number}",
+            ((80.0 * number, 40.0), (80.0 * number + 70.0, 40.0), (80.0 * number + 70.0, 440.0)),
+            with_emissivity(inputs, 0.5 + 0.05 * number, 0.03, f"zone {number}"),
+        )
+        for number in range(zone_count)
+    )
+    path = Path("image.tif")
+    job = ImageJob(path.name, path, inputs, zones)
+    frame = Frame(path, reading_k, Encoding("kelvin", 1.0, 0.0, "given"), "0" * 64)
+    labels = label_zones(zones, SHAPE)
+    models = radiation_models(model, CAMERA)
+    corrected = correct_frame(frame, reading_k, job, labels, CAMERA, models)
+    equations = corrected.equations
+
+    def formula() -> None:
+        surface = np.empty_like(reading_k)
+        for label, equation in enumerate(equations):
+            here = labels == label
+            surface[here] = equation.temperature_k(reading_k[here])
+
+    def both() -> None:
+        correct_frame(frame, reading_k, job, labels, CAMERA, models)
+
+    alone = cpu_seconds_of_many(formula, REPEATS)
+    whole = cpu_seconds_of_many(both, REPEATS)
+    count = "1 zone" if zone_count == 1 else f"{zone_count} zones"
+    size = f"{SHAPE[1]} x {SHAPE[0]}, {count}, {model}"
+    detail = f"correction {1e3 * alone:.1f} ms, both planes {1e3 * whole:.1f} ms"
+    report(f"uncertainty plane over correction, {size}", (whole - alone) / alone, LIMIT, detail)
+    assert whole - alone <= LIMIT * alone
+    assert np.isfinite(corrected.uncertainty_k).all()
