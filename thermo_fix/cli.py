@@ -139,7 +139,7 @@ def vet(folder: Folder) -> None:
 
     Exit status: 0 nothing wrong; 1 some images cannot be used; 2 the sheet is wrong.
     """
-    from thermo_fix.errors import ImageError
+    from thermo_fix.errors import ImageError, about_file
     from thermo_fix.read import read_frame
     from thermo_fix.sheet import check_polygon
     from thermo_fix.survey import open_survey
@@ -155,7 +155,7 @@ def vet(folder: Folder) -> None:
             messages = [check_polygon(zone, columns, rows) for zone in job.zones]
         except ImageError as error:
             bad += 1
-            _problem(str(error))
+            _problem(about_file(job.file, str(error)))
             continue
         for message in [*frame.notes, frame.encoding.note, *messages]:
             if message:
@@ -165,7 +165,7 @@ def vet(folder: Folder) -> None:
     raise typer.Exit(EXIT_SOME_FAILED if bad else EXIT_DONE)
 
 
-@app.command()
+@app.command(context_settings={"ignore_unknown_options": True})
 def point(
     reading_c: Annotated[float, typer.Argument(help="Reading of the camera, degC.")],
     emissivity: Annotated[
@@ -174,8 +174,12 @@ def point(
     reflected_c: Annotated[
         float | None, typer.Option(help="Reflected apparent temperature, degC; else the air's.")
     ] = None,
-    air_c: Annotated[float, typer.Option(help="Air temperature, degC.")] = 20.0,
-    humidity: Annotated[float, typer.Option(help="Relative humidity, 0 to 1.")] = 0.5,
+    air_c: Annotated[
+        float | None, typer.Option(help="Air temperature, degC; 20 is assumed if not given.")
+    ] = None,
+    humidity: Annotated[
+        float | None, typer.Option(help="Relative humidity, 0 to 1; 0.5 is assumed.")
+    ] = None,
     distance_m: Annotated[
         float | None, typer.Option(help="Distance, m; without it no air is corrected for.")
     ] = None,
@@ -184,6 +188,15 @@ def point(
     ] = None,
     window_transmittance: Annotated[
         float | None, typer.Option(help="Transmittance of an infrared window in the path.")
+    ] = None,
+    window_reflectance: Annotated[
+        float | None, typer.Option(help="Its reflectance; 0.04 is assumed.")
+    ] = None,
+    window_c: Annotated[
+        float | None, typer.Option(help="Its temperature, degC; that of the air if not given.")
+    ] = None,
+    window_reflected_c: Annotated[
+        float | None, typer.Option(help="Apparent temperature that it mirrors, degC.")
     ] = None,
     model: Annotated[str, typer.Option(help="Radiation model: total or band.")] = "total",
     band_um: Annotated[
@@ -217,6 +230,9 @@ def point(
             distance_m=distance_m,
             transmittance=transmittance,
             window_transmittance=window_transmittance,
+            window_reflectance=window_reflectance,
+            window_c=window_c,
+            window_reflected_c=window_reflected_c,
             model="band" if model == "band" else "total",
             band_um=band_um,
             recorded_emissivity=recorded_emissivity,

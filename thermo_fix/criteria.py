@@ -164,6 +164,24 @@ def built_in() -> Mapping[str, Criterion]:
     return {each.id: each for each in parse_criteria(text, "criteria.toml")}
 
 
+def all_criteria(file: Path | None = None) -> tuple[Criterion, ...]:
+    """Return the built-in criteria and those of a survey's own file, whose ids win.
+
+    Raises ``SheetError`` where the file is wrong.
+    """
+    known = dict(built_in())
+    if file is not None:
+        try:
+            text = file.read_text("utf-8")
+        except (OSError, UnicodeDecodeError) as error:
+            raise SheetError(
+                f"{file.name}: cannot be read ({type(error).__name__}); "
+                "give a UTF-8 TOML file in the survey folder"
+            ) from error
+        known |= {each.id: each for each in parse_criteria(text, file.name)}
+    return tuple(known.values())
+
+
 def load_criteria(names: Sequence[str], file: Path | None = None) -> tuple[Criterion, ...]:
     """Return criteria by name, from the built-in ones and a file of the survey's own.
 
@@ -180,16 +198,7 @@ def load_criteria(names: Sequence[str], file: Path | None = None) -> tuple[Crite
         An unknown name, or a file that is wrong.
 
     """
-    known = dict(built_in())
-    if file is not None:
-        try:
-            text = file.read_text("utf-8")
-        except (OSError, UnicodeDecodeError) as error:
-            raise SheetError(
-                f"{file.name}: cannot be read ({type(error).__name__}); "
-                "give a UTF-8 TOML file in the survey folder"
-            ) from error
-        known |= {each.id: each for each in parse_criteria(text, file.name)}
+    known = {each.id: each for each in all_criteria(file)}
     chosen = []
     for name in names:
         if name not in known:

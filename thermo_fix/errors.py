@@ -61,3 +61,10 @@ class NotAMeasurement(ImageError):
 
 class UnclearEncoding(ImageError):
     """The pixel values leave more than one physical meaning; the sheet must state it."""
+
+
+def about_file(file: str, message: str) -> str:
+    """Return a message that begins with the file, below the survey folder, that it is about."""
+    if message.startswith(f"{file}: "):
+        return message
+    return f"{file}: {message.removeprefix(file.rpartition('/')[2] + ': ')}"

@@ -14,6 +14,8 @@ from importlib.resources import files
 from types import MappingProxyType
 from typing import Any, Final, Literal
 
+from thermo_fix.errors import ThermoFixError
+
 Band = Literal["total normal", "total hemispherical", "8-14 um"]
 Obtained = Literal["found", "from memory"]
 UncertaintyBasis = Literal["spread", "judged"]
@@ -28,7 +30,7 @@ _SAME_WORD: Final = 0.75
 """Least similarity, 0 to 1, of two spellings of one word: "galvanized" and "galvanised"."""
 
 
-class UnknownSurface(LookupError):
+class UnknownSurface(ThermoFixError, LookupError):
     """No surface has the name asked for.
 
     ``name`` is what was asked for, ``nearest`` up to three names of the table, nearest first.

@@ -14,9 +14,8 @@ from thermo_fix.criteria import (
     DEFAULT_USE,
     LIMIT_CRITERION,
     Criterion,
-    built_in,
+    all_criteria,
     load_criteria,
-    parse_criteria,
 )
 from thermo_fix.errors import FolderError, SheetError
 from thermo_fix.grade import conditions
@@ -89,7 +88,12 @@ def open_survey(folder: Path) -> Survey:
         what = "is no folder" if folder.exists() else "does not exist"
         raise FolderError(f"{folder}: {what}; give the folder that holds the images")
     found = [path.as_posix() for path in list_images(folder)]
-    survey = load_survey(folder, found_files=found, known_criteria=_known_criteria)
+    survey = load_survey(
+        folder,
+        found_files=found,
+        known_criteria=_known_criteria,
+        known_settings=_known_settings,
+    )
     if survey.weather_file is not None:
         survey = _filled_by_weather(survey, survey.weather_file)
     if survey.criteria:
@@ -302,16 +306,11 @@ def _plane_names(files: list[str]) -> dict[str, str]:
 
 
 def _known_criteria(file: Path | None) -> tuple[str, ...]:
-    names = list(built_in())
-    if file is not None:
-        try:
-            names += [each.id for each in parse_criteria(file.read_text("utf-8"), file.name)]
-        except (OSError, UnicodeDecodeError) as error:
-            raise SheetError(
-                f"{file.name}: the criteria file cannot be read ({type(error).__name__}); "
-                "give a UTF-8 TOML file in the survey folder"
-            ) from error
-    return tuple(names)
+    return tuple(each.id for each in all_criteria(file))
+
+
+def _known_settings(file: Path | None) -> tuple[str, ...]:
+    return tuple(name for each in all_criteria(file) for name in each.settings)
 
 
 class _KeptPictures(Mapping[str, Pictures]):

@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 
 from thermo_fix.correct import correct_frame, planes_of, radiation_models
 from thermo_fix.criteria import Criterion
-from thermo_fix.errors import ThermoFixError
+from thermo_fix.errors import ThermoFixError, about_file
 from thermo_fix.find import find_regions
 from thermo_fix.grade import grade_finding
 from thermo_fix.measure import assess_image, measure_image, measure_regions
@@ -100,7 +100,7 @@ def process_image(task: ImageTask) -> Outcome:
         failed = ImageResult(
             file=job.file,
             status="failed",
-            error=str(error),
+            error=about_file(job.file, str(error)),
             asset=job.asset,
             note=job.note,
             zones=job.zones,

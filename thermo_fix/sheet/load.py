@@ -52,6 +52,7 @@ def load_survey(
     *,
     found_files: Sequence[str] = (),
     known_criteria: KnownCriteria | None = None,
+    known_settings: KnownCriteria | None = None,
 ) -> Survey:
     """Load and check the survey sheet of a folder; without one, assume documented defaults.
 
@@ -65,6 +66,8 @@ def load_survey(
     known_criteria
         Names that ``[criteria] use`` may hold; None leaves them unchecked. A function gets the
         path of the survey's own criteria file, or None.
+    known_settings
+        The same for ``[criteria] settings``.
 
     Returns
     -------
@@ -90,7 +93,11 @@ def load_survey(
         return _without_sheet(folder, found_files)
     text = toml_text.read_text(sheet)
     raw = toml_text.parse(text, SHEET_NAME)
-    return _SheetLoader(folder, text, raw, found_files, known_criteria).load()
+    return _SheetLoader(folder, text, raw, found_files, known_criteria, known_settings).load()
+
+
+def _names(known: KnownCriteria | None, own_file: Path | None) -> Sequence[str] | None:
+    return known(own_file) if callable(known) else known
 
 
 def _refuse_misnamed_sheet(folder: Path) -> None:
@@ -142,6 +149,7 @@ class _SheetLoader:
     raw: dict[str, object]
     found_files: Sequence[str]
     known_criteria: KnownCriteria | None
+    known_settings: KnownCriteria | None
 
     def __post_init__(self) -> None:
         self.problems = Problems(self.text, self.raw)
@@ -265,17 +273,22 @@ class _SheetLoader:
         return path
 
     def _check_criteria(self, criteria: CriteriaTable, own_file: Path | None) -> None:
-        if self.known_criteria is None or not criteria.use:
+        if criteria.use:
+            known = _names(self.known_criteria, own_file)
+            for place, name in enumerate(criteria.use):
+                self._check_name(name, known, ("criteria", "use", place), "criterion")
+        if criteria.settings:
+            known = _names(self.known_settings, own_file)
+            for name in criteria.settings:
+                self._check_name(name, known, ("criteria", "settings", name), "setting")
+
+    def _check_name(
+        self, name: str, known: Sequence[str] | None, path: KeyPath, what: str
+    ) -> None:
+        if known is None or name in known:
             return
-        known = (
-            self.known_criteria(own_file)
-            if callable(self.known_criteria)
-            else (self.known_criteria)
-        )
-        for place, name in enumerate(criteria.use):
-            if name not in known:
-                hint = f'; nearest: "{nearest(name, tuple(known))}"' if known else ""
-                self.problems.add(("criteria", "use", place), f"unknown criterion{hint}")
+        hint = f'; nearest: "{nearest(name, tuple(known))}"' if known else ""
+        self.problems.add(path, f"unknown {what}{hint}")
 
     def _stated(self, table: SceneKeys, scope: str, path: KeyPath) -> Stated:
         return stated(table, scope, path, self._find_plane)
