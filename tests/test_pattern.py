@@ -15,9 +15,9 @@ from thermo_fix.measure.shape import Shape, describe
 from thermo_fix.measure.trade import Measured
 from thermo_fix.records import CorrectedFrame, Region
 
-HELD_OUT = range(5000, 5050)
+HELD_OUT = range(7000, 7050)
 """Seeds that were not looked at while the rule was made; it was made on 0 to 59, and earlier forms
-were tried on 1000 to 1059 and 2000 to 2049."""
+were tried on 1000 to 1059, 2000 to 2049 and 5000 to 5049."""
 
 Table = dict[str, dict[str | None, int]]
 

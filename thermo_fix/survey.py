@@ -17,7 +17,7 @@ from thermo_fix.criteria import (
     all_criteria,
     load_criteria,
 )
-from thermo_fix.errors import FolderError, SheetError
+from thermo_fix.errors import FolderError
 from thermo_fix.grade import conditions
 from thermo_fix.pool import (
     default_jobs,

@@ -18,6 +18,7 @@ from thermo_fix.measure.heat import (
     warm_side_is_inside,
 )
 from thermo_fix.measure.moisture import DESIGN, moisture_of
+from thermo_fix.measure.pattern import pattern_assessment
 from thermo_fix.measure.spot import Spot, spot_of_median
 from thermo_fix.measure.trade import Extras, Measured
 from thermo_fix.records import (
@@ -51,12 +52,15 @@ def finding_extras(measured: Measured) -> Extras:
     Extras
         Moisture for a cold finding inside, with the design conditions as a scenario; heat flow
         for a finding that lets more heat through than its surroundings. What they lack is named;
-        where the sheet tells nothing of indoors and outdoors, nothing is added.
+        where the sheet tells nothing of indoors and outdoors, neither is added. The pattern that
+        its shape resembles, for any finding.
 
     """
     inputs = measured.corrected.inputs[measured.region.label]
+    shape = pattern_assessment(measured)
+    patterns = () if shape is None else (shape,)
     if not _is_building_told(inputs):
-        return Extras()
+        return Extras(patterns)
     job = measured.corrected.job
     lacking = missing_inputs(inputs)
     assessments: list[Assessment] = []
@@ -79,7 +83,7 @@ def finding_extras(measured: Measured) -> Extras:
         assessments.append(
             _not_computed(KIND, title, lacking) if lacking else _excess(measured, title)
         )
-    return Extras(tuple(assessments), (), extras.scenarios, words=extras.words)
+    return Extras((*assessments, *patterns), (), extras.scenarios, words=extras.words)
 
 
 def image_assessments(

@@ -207,7 +207,8 @@ def area_of(area_m2: float, inputs: SceneInputs) -> Estimate:
     def area(reach_m: Real, angle_deg: Real = tilt) -> Real:
         tilted = np.cos(np.radians(np.clip(angle_deg, -89.0, 89.0)))
         result: Real = area_m2 * (reach_m / distance.value) ** 2
-        return result * math.cos(math.radians(tilt)) / tilted
+        result = result * math.cos(math.radians(tilt)) / tilted
+        return result
 
     return combined(area, *parts)
 

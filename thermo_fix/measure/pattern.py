@@ -2,11 +2,10 @@
 
 A suggestion, never a diagnosis. Each pattern is a short list of marks taken from its description;
 a mark is a descriptor of the shape put through a ramp from 0 (no) to 1 (yes). A pattern's score is
-the geometric mean of its marks, so that one mark that is missing counts. The best pattern is named
-only where its score is high enough and clearly above the next; else the answer is 'cannot tell'.
+its weakest mark: a description fits only where all of it fits. The best pattern is named only where
+its score is high enough and clearly above the next; else the answer is 'cannot tell'.
 """
 
-import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 
@@ -16,13 +15,11 @@ from thermo_fix.measure.shape import Shape, describe
 from thermo_fix.measure.trade import Measured
 from thermo_fix.records import Assessment, Figure
 
-LEAST_SCORE = 0.45
-LEAST_MARGIN = 0.15
+LEAST_SCORE = 0.3
+LEAST_MARGIN = 0.2
 """Scores and margin below which nothing is named; judged, not fitted to any survey."""
 
 SOURCE = "EN 13187 and ISO 6781, descriptions of typical patterns (wording from memory)"
-
-_LEAST_MARK = 0.02
 
 _MEANING = {
     "missing insulation": "missing or defective insulation (regular, well defined, even)",
@@ -60,9 +57,9 @@ def pattern_of(shape: Shape) -> Pattern:
     straight = max(_ramp(shape.rectangularity, 0.7, 0.88), _ramp(shape.straight_share, 0.45, 0.75))
     outline = max(uneven, _ramp(shape.raggedness, 1.05, 1.25))
     scores = {
-        "missing insulation": _together(straight, 1 - diffuse, 1 - spread, 1 - narrow),
-        "air leakage": _together(outline, fading, spread),
-        "moisture": _together(
+        "missing insulation": min(straight, 1 - diffuse, 1 - spread, 1 - narrow),
+        "air leakage": min(outline, fading, spread),
+        "moisture": min(
             diffuse,
             _ramp(shape.mottling, 0.008, 0.025),
             1 - _ramp(shape.trend, 0.1, 0.22),
@@ -71,8 +68,8 @@ def pattern_of(shape: Shape) -> Pattern:
             1 - meeting,
         ),
         "thermal bridge": max(
-            _together(narrow, straight, 1 - uneven, 1 - fading),
-            _together(meeting, 1 - uneven, 1 - fading, spread),
+            min(narrow, straight, 1 - uneven, 1 - fading),
+            min(meeting, 1 - uneven, 1 - fading, spread),
         ),
     }
     first, second = sorted(scores, key=lambda name: -scores[name])[:2]
@@ -155,7 +152,3 @@ def _figures(shape: Shape) -> tuple[Figure, ...]:
 
 def _ramp(value: float, none: float, full: float) -> float:
     return min(1.0, max(0.0, (value - none) / (full - none)))
-
-
-def _together(*marks: float) -> float:
-    return math.exp(sum(math.log(max(mark, _LEAST_MARK)) for mark in marks) / len(marks))

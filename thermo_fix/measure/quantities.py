@@ -14,7 +14,6 @@ from thermo_fix.records import Input, SceneInputs, VariableWords
 from thermo_fix.uncertainty.estimate import Estimate
 from thermo_fix.uncertainty.variables import Variable
 
-
 SIDE = "side"
 """Sheet key, and the name under which is kept what is lacking to tell the side of a surface."""
 _SIDE_KEYS = ("air_c", "indoor_c", "outdoor_c")

@@ -282,9 +282,7 @@ class _SheetLoader:
             for name in criteria.settings:
                 self._check_name(name, known, ("criteria", "settings", name), "setting")
 
-    def _check_name(
-        self, name: str, known: Sequence[str] | None, path: KeyPath, what: str
-    ) -> None:
+    def _check_name(self, name: str, known: Sequence[str] | None, path: KeyPath, what: str) -> None:
         if known is None or name in known:
             return
         hint = f'; nearest: "{nearest(name, tuple(known))}"' if known else ""

@@ -75,20 +75,30 @@ class Variable:
         )
 
     def draw(self, count: int = DRAWS, seed: int = SEED) -> NDArray[np.float64]:
-        """Draw ``count`` values; the same ones for the same name and seed."""
-        if self.u == 0.0:
-            return np.full(count, self.value)
-        uniform = uniform_draws(self.name, count, seed)
-        if self.shape == "rectangular":
-            return self.value + self.u * math.sqrt(3.0) * (2.0 * uniform - 1.0)
-        if self.is_cut:
-            low = float(ndtr((self.lower - self.value) / self.u))
-            high = float(ndtr((self.upper - self.value) / self.u))
+        """Draw ``count`` values; the same ones for the same name and seed. Read only."""
+        return _draw(self, count, seed)
+
+
+@lru_cache(maxsize=256)
+def _draw(variable: Variable, count: int, seed: int) -> NDArray[np.float64]:
+    # Kept, because every finding of a zone and every scenario of a finding draws the same again.
+    if variable.u == 0.0:
+        draws = np.full(count, variable.value)
+    elif variable.shape == "rectangular":
+        unit = 2.0 * uniform_draws(variable.name, count, seed) - 1.0
+        draws = variable.value + variable.u * math.sqrt(3.0) * unit
+    else:
+        uniform = uniform_draws(variable.name, count, seed)
+        if variable.is_cut:
+            low = float(ndtr((variable.lower - variable.value) / variable.u))
+            high = float(ndtr((variable.upper - variable.value) / variable.u))
             uniform = low + uniform * (high - low)
-        return np.asarray(self.value + self.u * ndtri(uniform))
+        draws = np.asarray(variable.value + variable.u * ndtri(uniform))
+    draws.setflags(write=False)
+    return draws
 
 
-@lru_cache(maxsize=512)
+@lru_cache(maxsize=256)
 def uniform_draws(name: str, count: int, seed: int) -> NDArray[np.float64]:
     """Return ``count`` draws from (0, 1) that depend on the name and the seed alone.
 
