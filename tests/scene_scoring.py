@@ -3,8 +3,8 @@
 For people: ``python -m tests.scene_scoring FOLDER...`` runs each folder and prints a table. Results
 go to a temporary folder, so that the surveys stay as they are.
 
-A planted anomaly is found when a finding of the same sense overlaps its box. A finding is false when
-it overlaps no planted box of its sense, widened by 4 pixels. Area and extreme are those of the
+A planted anomaly is found when a finding of the same sense overlaps its box. A finding is false
+when it overlaps no planted box of its sense, widened by 4 pixels. Area and extreme are those of the
 overlapping finding that shares most pixels with the box.
 """
 
@@ -22,7 +22,7 @@ from scipy import constants
 
 from thermo_fix.records import Finding, ImageResult, SurveyResult
 from thermo_fix.sheet import zone_mask
-from thermo_fix.survey import run_survey
+from thermo_fix.survey import RunOptions, run_survey
 
 NEAR_PX = 4
 AREA_RATIO = (0.8, 1.25)
@@ -185,7 +185,8 @@ def score_result(result: SurveyResult, truths: Sequence[dict[str, Any]]) -> Scor
 def score_folder(folder: Path, out: Path) -> Score:
     """Run a survey that has a truth.json, with its results in `out`, and score it."""
     truths = json.loads((folder / "truth.json").read_text("utf-8"))
-    return score_result(run_survey(folder, out), truths)
+    options = RunOptions(planes=False, pictures=False)
+    return score_result(run_survey(folder, out, options=options), truths)
 
 
 HEADER = (

@@ -45,7 +45,7 @@ MAY_IMPORT: dict[str, set[str]] = {
     "version": set(),
     "cautions": set(),
     "defaults": set(),
-    "surfaces": set(),
+    "surfaces": {"errors"},
     # Physics.
     "radiometry": {"constants", "errors"},
     "thermal": {"constants", "errors", "radiometry"},

@@ -10,7 +10,7 @@ import pytest
 from tests.scene_scoring import Score, score_result
 from thermo_fix.demo import demo_surveys
 from thermo_fix.records import Finding, SurveyResult
-from thermo_fix.survey import run_survey
+from thermo_fix.survey import RunOptions, run_survey
 
 TRUTH: dict[str, list[dict[str, Any]]] = json.loads(
     (Path(__file__).parent / "data" / "demo_truth.json").read_text("utf-8")
@@ -24,7 +24,7 @@ def results(tmp_path_factory: pytest.TempPathFactory) -> dict[str, SurveyResult]
     for name, source in demo_surveys().items():
         folder = tmp_path_factory.mktemp("demo") / name
         shutil.copytree(source, folder)
-        done[name] = run_survey(folder)
+        done[name] = run_survey(folder, options=RunOptions(jobs=1, planes=False, pictures=False))
     return done
 
 

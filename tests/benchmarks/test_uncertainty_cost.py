@@ -1,14 +1,15 @@
 """What the uncertainty plane costs, against the correction itself, in the same run.
 
-``correct_frame`` gives the surface temperature and its uncertainty at every pixel. It is timed as it
-is, and with everything that only the uncertainty needs taken out of it; the difference is the price
-of the uncertainty. The plain formula, pixel by pixel, is timed beside them for comparison.
+``correct_frame`` gives the surface temperature and its uncertainty at every pixel. It is timed as
+it is, and with everything that only the uncertainty needs taken out of it; the difference is the
+price of the uncertainty. The plain formula, pixel by pixel, is timed beside them for comparison.
 """
 
 from pathlib import Path
 
 import numpy as np
 import pytest
+from numpy.typing import NDArray
 
 from tests.benchmarks.measure import cpu_seconds_of_many, report
 from tests.uncertainty.in_memory import scene_inputs, with_emissivity
@@ -17,6 +18,9 @@ from thermo_fix.correct import correct_frame, kernel, radiation_models
 from thermo_fix.records import Camera, Encoding, Frame, ImageJob, ModelName, Zone
 from thermo_fix.sheet.zones import label_zones
 from thermo_fix.uncertainty.equation import MeasurementEquation
+
+Kelvins = NDArray[np.float32]
+Doubles = NDArray[np.float64]
 
 SHAPE = (480, 640)
 LIMIT = 2.0
@@ -68,8 +72,14 @@ def test_uncertainty_costs_at_most_twice_the_correction(
     whole = cpu_seconds_of_many(both, REPEATS)
     with monkeypatch.context() as patch:
         look_up = kernel._look_up
+
+        def temperature_only(
+            readings: Kelvins, nodes: Doubles, per_node: int, wanted: list[tuple[Doubles, Kelvins]]
+        ) -> None:
+            look_up(readings, nodes, per_node, wanted[:1])
+
         patch.setattr(MeasurementEquation, "u_k", lambda _, nodes: np.zeros_like(nodes))
-        patch.setattr(kernel, "_look_up", lambda *given: look_up(*given[:3], given[3][:1]))
+        patch.setattr(kernel, "_look_up", temperature_only)
         alone = cpu_seconds_of_many(both, REPEATS)
     count = "1 zone" if zone_count == 1 else f"{zone_count} zones"
     size = f"{SHAPE[1]} x {SHAPE[0]}, {count}, {model}"

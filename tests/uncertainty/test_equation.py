@@ -461,6 +461,6 @@ def test_emissivity_at_an_angle_moves_with_the_normal_one(
     drawn = at_angle(np.random.default_rng(3).normal(emissivity, u, 200_000))
     reflected = (10.0 + 273.15) ** 4
     surface = (((30.0 + 273.15) ** 4 - (1.0 - drawn) * reflected) / drawn) ** 0.25
-    # The angle's factor is taken as linear over the spread of the emissivity; it bends by that much.
+    # The angle's factor is taken as linear over the spread of the emissivity.
     assert tested.u_k(reading_k) == pytest.approx(surface.std(), rel=0.03)
     assert tested.draw_k(reading_k, independent={}).std() == pytest.approx(surface.std(), rel=0.03)
