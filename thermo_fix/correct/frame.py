@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 from thermo_fix import cautions
 from thermo_fix.correct.inputs import Models, equation_of, fill_sky, with_input
 from thermo_fix.correct.kernel import planes_of
+from thermo_fix.correct.quality import image_cautions, range_ends_k
 from thermo_fix.correct.reference_zone import foil_temperature
 from thermo_fix.errors import ImageError
 from thermo_fix.radiometry.air import STRETCHED_BEYOND_M
@@ -19,6 +20,7 @@ from thermo_fix.records import (
     Frame,
     ImageJob,
     LabelArray,
+    MaskArray,
     SceneInputs,
 )
 from thermo_fix.uncertainty.equation import MeasurementEquation
@@ -86,6 +88,7 @@ def correct_frame(
         reading_k, labels, equations, emissivity_planes, reflected_planes
     )
     uncertainty_k[np.isnan(surface_k)] = np.nan
+    ends = range_ends_k(frame, reading_k, _left_out(job, labels))
     return CorrectedFrame(
         job=job,
         frame=frame,
@@ -97,7 +100,13 @@ def correct_frame(
         inputs=tuple(inputs),
         emissivity_planes=emissivity_planes,
         reflected_planes=reflected_planes,
-        cautions=_cautions(job, inputs, equations, int(np.count_nonzero(np.isnan(surface_k)))),
+        range_ends_k=ends,
+        cautions=(
+            *_cautions(job, inputs, equations),
+            *image_cautions(
+                frame, reading_k, surface_k, uncertainty_k, job, inputs, equations, camera, ends
+            ),
+        ),
     )
 
 
@@ -192,7 +201,6 @@ def _cautions(
     job: ImageJob,
     inputs: list[SceneInputs],
     equations: list[MeasurementEquation],
-    nan_px: int,
 ) -> tuple[str, ...]:
     found: list[str] = []
     wheres = ["the image", *(f"zone {zone.name}" for zone in job.zones)]
@@ -212,6 +220,13 @@ def _cautions(
         distance = every.value("distance_m")
         if equation.uses_air_formula and distance is not None and distance > STRETCHED_BEYOND_M:
             found.append(cautions.stretched_air(distance))
-    if nan_px:
-        found.append(cautions.unsolved(nan_px))
+        if every.values["reflected_c"].origin == "computed":
+            found.append(cautions.computed_reflected(where))
     return tuple(dict.fromkeys(found))
+
+
+def _left_out(job: ImageJob, labels: LabelArray) -> MaskArray | None:
+    """Return the pixels of zones that the sheet leaves out; None where there are none."""
+    if not any(zone.ignore for zone in job.zones):
+        return None
+    return np.asarray(np.array([False, *(zone.ignore for zone in job.zones)])[labels])

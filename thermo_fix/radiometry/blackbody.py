@@ -171,21 +171,40 @@ class _Table:
         self._single = (values.astype(np.float32), rises.astype(np.float32))
 
     def __call__(self, x: Real) -> Real:
-        array = np.asarray(x)
+        if not isinstance(x, np.ndarray):
+            return self._of_number(float(x))
         values: NDArray[np.floating[Any]]
         rises: NDArray[np.floating[Any]]
-        values, rises = self._double
-        if array.dtype == np.float32:
-            values, rises = self._single
-        else:
-            array = array.astype(np.float64, copy=False)
-        position = (array - self._start) * self._per_step
+        values, rises = self._single if x.dtype == np.float32 else self._double
+        position = (x - self._start) * self._per_step
         with np.errstate(invalid="ignore"):
             inside = (position >= 0.0) & (position <= self._last + 1)
-            index = np.clip(np.nan_to_num(position), 0, self._last).astype(np.intp)
-        result = values[index] + (position - index).astype(array.dtype) * rises[index]
-        result = np.where(inside, result, np.asarray(np.nan, array.dtype))
-        return result if isinstance(x, np.ndarray) else float(result)
+            if inside.all():
+                index = np.minimum(position.astype(np.intp), self._last)
+                return _between(values, rises, position, index)
+            index = np.where(inside, position, 0.0).astype(np.intp)
+            np.minimum(index, self._last, out=index)
+            result = _between(values, rises, position, index)
+        return np.where(inside, result, np.asarray(np.nan, values.dtype))
+
+    def _of_number(self, x: float) -> float:
+        # A number costs twenty times less without numpy, and findings take thousands of them.
+        position = (x - self._start) * self._per_step
+        if not 0.0 <= position <= self._last + 1:
+            return float("nan")
+        index = min(int(position), self._last)
+        values, rises = self._double
+        return float(values[index] + (position - index) * rises[index])
+
+
+def _between(
+    values: NDArray[np.floating[Any]],
+    rises: NDArray[np.floating[Any]],
+    position: NDArray[np.floating[Any]],
+    index: NDArray[np.intp],
+) -> NDArray[np.floating[Any]]:
+    share = np.asarray(position - index, values.dtype)
+    return np.asarray(values[index] + share * rises[index])
 
 
 def blackbody_fraction(wavelength_temperature_um_k: Real) -> NDArray[np.float64]:

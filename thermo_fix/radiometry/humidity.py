@@ -155,4 +155,10 @@ def _log_saturation(kelvin: NDArray[np.float64]) -> NDArray[np.float64]:
         polynomial = c[1] + kelvin * (c[2] + kelvin * (c[3] + kelvin * (c[4] + kelvin * c[5])))
         return np.asarray(c[0] / kelvin + polynomial + c[6] * np.log(kelvin))
 
-    return np.asarray(np.where(kelvin < ZERO_CELSIUS_K, series(_ICE), series(_WATER)))
+    frozen = kelvin < ZERO_CELSIUS_K
+    # Mostly all values lie on one side, and a series is costly for many draws.
+    if not np.any(frozen):
+        return series(_WATER)
+    if np.all(frozen):
+        return series(_ICE)
+    return np.asarray(np.where(frozen, series(_ICE), series(_WATER)))

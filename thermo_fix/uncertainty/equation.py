@@ -9,6 +9,7 @@ from here.
 import math
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -45,6 +46,7 @@ _WINDOW_KEYS = (
 )
 _SMALLEST_EMISSIVITY = 1e-3
 _ANGLE_STEP_DEG = 0.05
+_ANGLES = np.linspace(0.0, 89.0, 357)
 _LEAST_EMISSIVITY_STEP = 1e-3
 
 
@@ -176,16 +178,13 @@ class MeasurementEquation:
             return directional_factor(normal, angle.value)
         # Tabulated over the spread of the angle: the draws are many, the curve is smooth.
         # Draws below zero are views from the other side.
-        grid = np.linspace(0.0, 89.0, 357)
-        curve = np.array([directional_factor(normal, step) for step in grid])
         drawn = np.abs(values["view_angle_deg"])
-        factor = np.interp(drawn, grid, curve)
+        factor = np.interp(drawn, _ANGLES, _factor_curve(normal))
         if "emissivity" in values:
             # The index, and so the curve, follows the normal emissivity; linear over its spread.
             u = self.variables["emissivity"].u
-            slope = np.array([_factor_slope(normal, u, step) for step in grid])
-            error = values["emissivity"] - normal
-            factor = np.clip(factor + np.interp(drawn, grid, slope) * error, 1e-3, 1.0)
+            slope = np.interp(drawn, _ANGLES, _factor_slope_curve(normal, u))
+            factor = np.clip(factor + slope * (values["emissivity"] - normal), 1e-3, 1.0)
         return np.asarray(factor)
 
     def _emissivity_gain(self) -> float:
@@ -383,6 +382,16 @@ class MeasurementEquation:
                 values["air_formula"] = formula.draw(draws, seed)
             self._cache[key] = self.path(values, emissivity, reflected_c)
         return self._cache[key]  # type: ignore[return-value]
+
+
+@lru_cache(maxsize=64)
+def _factor_curve(normal: float) -> NDArray[np.float64]:
+    return np.array([directional_factor(normal, angle) for angle in _ANGLES])
+
+
+@lru_cache(maxsize=64)
+def _factor_slope_curve(normal: float, u: float) -> NDArray[np.float64]:
+    return np.array([_factor_slope(normal, u, angle) for angle in _ANGLES])
 
 
 def _factor_slope(normal: float, u: float, angle_deg: float) -> float:
