@@ -3,7 +3,9 @@
 Exit status: 0 all done; 1 some images failed; 2 the survey could not be run.
 """
 
+import io
 import os
+import shlex
 import shutil
 import sys
 from pathlib import Path
@@ -11,8 +13,9 @@ from typing import TYPE_CHECKING, Annotated, NoReturn
 
 import typer
 
-from thermo_fix.errors import ThermoFixError
+from thermo_fix.errors import SheetError, ThermoFixError, one_line, reason_of
 from thermo_fix.solve_cli import solve
+from thermo_fix.terminal import problem, say, several_lines, trace
 from thermo_fix.version import __version__
 
 if TYPE_CHECKING:
@@ -48,12 +51,22 @@ Folder = Annotated[
 ]
 
 
+class _Settings:
+    """What was asked for ahead of the command."""
+
+    debug = False
+
+
 @app.callback(invoke_without_command=True)
 def _root(
     version: Annotated[bool, typer.Option("--version", help="Print the version.")] = False,
+    debug: Annotated[
+        bool, typer.Option("--debug", help="When something fails, show where in the program.")
+    ] = False,
 ) -> None:
+    _Settings.debug = debug
     if version:
-        print(f"thermo_fix {__version__}")
+        say(f"thermo_fix {__version__}")
         raise typer.Exit
 
 
@@ -100,6 +113,7 @@ def run(
         fresh=fresh,
         planes=not no_planes,
         pictures=not no_pictures,
+        debug=_Settings.debug,
     )
     raise typer.Exit(_run(folder, out, quiet, options))
 
@@ -129,8 +143,8 @@ def draft(
         partial.replace(sheet)
     except OSError as error:
         _fail(f"{sheet}: cannot be written ({(error.strerror or 'error').lower()})")
-    print(f"{sheet}: drafted for {len(facts)} images. Fill in what is marked, then:")
-    print(f"  thermo-fix vet {_quoted(folder)}")
+    say(f"{sheet}: drafted for {len(facts)} images. Fill in what is marked, then:")
+    say(f"  thermo-fix vet {_quoted(folder)}")
 
 
 @app.command()
@@ -146,7 +160,7 @@ def vet(folder: Folder) -> None:
 
     survey = open_survey(folder)
     for note in survey.notes:
-        print(f"note: {note}")
+        say(f"note: {note}")
     bad = 0
     for job in survey.images:
         try:
@@ -155,13 +169,13 @@ def vet(folder: Folder) -> None:
             messages = [check_polygon(zone, columns, rows) for zone in job.zones]
         except ImageError as error:
             bad += 1
-            _problem(about_file(job.file, str(error)))
+            problem(about_file(job.file, str(error)))
             continue
         for message in [*frame.notes, frame.encoding.note, *messages]:
             if message:
-                print(f"note: {job.file}: {message}" if job.file not in message else message)
+                say(f"note: {job.file}: {message}" if job.file not in message else message)
     good = len(survey.images) - bad
-    print(f"{folder}: sheet in order; {good} of {len(survey.images)} images can be used.")
+    say(f"{folder}: sheet in order; {good} of {len(survey.images)} images can be used.")
     raise typer.Exit(EXIT_SOME_FAILED if bad else EXIT_DONE)
 
 
@@ -246,8 +260,8 @@ def point(
             "no surface temperature explains this reading: with these inputs the surroundings "
             "alone would send more than was seen; check emissivity and reflected temperature"
         )
-    print(f"surface temperature {temperature:.2f} degC, standard uncertainty {u:.2f} K (k = 1)")
-    print(f"95 % interval {temperature - 1.96 * u:.1f} to {temperature + 1.96 * u:.1f} degC")
+    say(f"surface temperature {temperature:.2f} degC, standard uncertainty {u:.2f} K (k = 1)")
+    say(f"95 % interval {temperature - 1.96 * u:.1f} to {temperature + 1.96 * u:.1f} degC")
 
 
 @app.command()
@@ -267,39 +281,59 @@ def demo(
         target = folder / name
         shutil.copytree(source, target)
         # The demo has a broken file on purpose, so that a failed image can be seen.
-        outcome = _run(target, None, False, RunOptions(jobs=None))
+        outcome = _run(target, None, False, RunOptions(jobs=None, debug=_Settings.debug))
         status = max(status, EXIT_DONE if outcome == EXIT_SOME_FAILED else outcome)
     raise typer.Exit(status)
 
 
 def main() -> NoReturn:
     """Run the command line and leave with its exit status."""
+    _Settings.debug = False
     try:
         code = app(standalone_mode=False)
+        sys.stdout.flush()
         sys.exit(code if isinstance(code, int) else EXIT_DONE)
-    except ThermoFixError as error:
-        for line in str(error).splitlines():
-            _problem(line)
-        sys.exit(EXIT_NOT_RUN)
     except typer.Exit as leave:
         sys.exit(leave.exit_code)
-    except typer.Abort:
-        _problem("stopped")
-        sys.exit(EXIT_NOT_RUN)
-    except KeyboardInterrupt:
-        _problem("stopped; finished images are kept, and the same command carries on")
-        sys.exit(EXIT_NOT_RUN)
     except BrokenPipeError:
         # The reader of our output has gone, as after "| head": nothing to say to anybody.
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         sys.exit(EXIT_DONE)
+    except KeyboardInterrupt:
+        problem("stopped; finished images are kept, and the same command carries on")
     except Exception as error:
-        # Usage errors of the command line know how to show themselves.
-        show = getattr(error, "show", None)
-        if show is None:
-            raise
-        show()
-        sys.exit(EXIT_NOT_RUN)
+        if _Settings.debug:
+            trace(error)
+        _explain(error)
+    sys.exit(EXIT_NOT_RUN)
+
+
+def _explain(error: Exception) -> None:
+    """Say on standard error what went wrong, one line for each thing to mend."""
+    # Usage errors of the command line know how to show themselves.
+    show = getattr(error, "show", None)
+    if isinstance(error, SheetError):
+        for line in error.problems:
+            problem(line)
+    elif isinstance(error, ThermoFixError):
+        problem(str(error))
+    elif isinstance(error, typer.Abort):
+        problem("stopped")
+    elif callable(show):
+        text = io.StringIO()
+        show(file=text)
+        several_lines(text.getvalue())
+    elif isinstance(error, OSError):
+        where = "" if error.filename is None else f"{os.fsdecode(error.filename)}: "
+        problem(f"{where}cannot be used ({reason_of(error)})")
+    elif isinstance(error, MemoryError):
+        problem("the memory of this computer is not enough; try --jobs 1")
+    else:
+        name = type(error).__name__
+        problem(
+            f"a fault of this program ({name}: {error}); please report it with what "
+            "thermo-fix --debug and the same command show"
+        )
 
 
 def _run(folder: Path, out: Path | None, quiet: bool, options: "RunOptions") -> int:
@@ -313,9 +347,9 @@ def _run(folder: Path, out: Path | None, quiet: bool, options: "RunOptions") -> 
         from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn
         from rich.progress import TimeRemainingColumn as Remaining
 
-        columns = (TextColumn("{task.description}"), BarColumn(), MofNCompleteColumn(), Remaining())
+        columns = (TextColumn("{task.description}", markup=False), BarColumn(), MofNCompleteColumn(), Remaining())
         with Progress(*columns, console=Console(stderr=True), transient=True) as bar:
-            task = bar.add_task(folder.name, total=None)
+            task = bar.add_task(one_line(folder.name), total=None)
             result = run_survey(
                 folder,
                 out,
@@ -323,18 +357,22 @@ def _run(folder: Path, out: Path | None, quiet: bool, options: "RunOptions") -> 
                 progress=lambda done, total, _: bar.update(task, completed=done, total=total),
             )
     for image in result.failed:
-        _problem(image.error or f"{image.file}: failed")
+        problem(image.error or f"{image.file}: failed")
     if not quiet:
         from thermo_fix.records import GRADES
 
         for note in result.survey.notes:
-            print(f"note: {note}")
+            say(f"note: {note}")
         grades = [finding.grade for finding in result.findings]
         counts = ", ".join(f"{grades.count(grade)} {grade}" for grade in reversed(GRADES))
         done = len(result.images) - len(result.failed)
-        print(f"{folder}: {done} of {len(result.images)} images done, {len(grades)} findings")
-        print(f"  by grade: {counts}, {grades.count(None)} not graded")
-        print(f"  report: {target / 'report.html'}")
+        say(f"{folder}: {done} of {len(result.images)} images done, {len(grades)} findings")
+        say(f"  by grade: {counts}, {grades.count(None)} not graded")
+        images = sum(bool(image.every_caution) for image in result.images)
+        findings = sum(bool(finding.every_caution) for finding in result.findings)
+        if images or findings:
+            say(f"  cautions: {images} images, {findings} findings; see the report")
+        say(f"  report: {target / 'report.html'}")
     return EXIT_SOME_FAILED if result.failed else EXIT_DONE
 
 
@@ -353,7 +391,7 @@ def _facts(folder: Path) -> "list[FileFacts]":
             facts.append(FileFacts(name, 0, 0, note=str(error)))
             continue
         except ImageError as error:
-            _problem(str(error))
+            problem(str(error))
             continue
         rows, columns = frame.shape
         encoding = frame.encoding
@@ -373,14 +411,14 @@ def _facts(folder: Path) -> "list[FileFacts]":
 
 
 def _quoted(path: Path) -> str:
+    """Write a path as a shell takes it."""
     text = str(path)
-    return f'"{text}"' if " " in text else text
-
-
-def _problem(line: str) -> None:
-    print(f"thermo-fix: {line}", file=sys.stderr)
+    plain = text.replace(" ", "").replace("/", "").replace(os.sep, "").replace("_", "")
+    if plain.replace("-", "").replace(".", "").replace(":", "").isalnum():
+        return f'"{text}"' if " " in text else text
+    return shlex.quote(text)
 
 
 def _fail(line: str) -> NoReturn:
-    _problem(line)
+    problem(line)
     raise typer.Exit(EXIT_NOT_RUN)

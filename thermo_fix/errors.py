@@ -63,8 +63,30 @@ class UnclearEncoding(ImageError):
     """The pixel values leave more than one physical meaning; the sheet must state it."""
 
 
+def one_line(text: str) -> str:
+    r"""Return a text from outside as one line in which nothing is hidden.
+
+    A file name or a cell may hold line breaks, terminal commands, marks that turn the direction of
+    the text around them, or bytes that are no text; all of these become escapes such as ``\x1b``.
+    """
+    if text.isprintable():
+        return text
+    return "".join(
+        character
+        if character.isprintable()
+        else character.encode("unicode_escape", "surrogatepass").decode("ascii")
+        for character in text
+    )
+
+
+def reason_of(error: OSError) -> str:
+    """Return why the operating system refused something, in a few words."""
+    return one_line((error.strerror or "unknown reason").lower())
+
+
 def about_file(file: str, message: str) -> str:
     """Return a message that begins with the file, below the survey folder, that it is about."""
-    if message.startswith(f"{file}: "):
+    name = one_line(file)
+    if message.startswith(f"{name}: "):
         return message
-    return f"{file}: {message.removeprefix(file.rpartition('/')[2] + ': ')}"
+    return f"{name}: {message.removeprefix(name.rpartition('/')[2] + ': ')}"

@@ -377,6 +377,17 @@ class Frame:
 
 
 @dataclass(frozen=True, slots=True)
+class RangeEnds:
+    """Readings at which an image ends although its scene may go on; None where it does not."""
+
+    least_k: float | None = None
+    greatest_k: float | None = None
+    least_px: int = 0
+    """Pixels at the least reading."""
+    greatest_px: int = 0
+
+
+@dataclass(frozen=True, slots=True)
 class CorrectedFrame:
     """One image with its surface temperatures and the equations behind them.
 
@@ -403,6 +414,7 @@ class CorrectedFrame:
     """By label, (rows, columns), degC."""
     notes: tuple[str, ...] = ()
     cautions: tuple[str, ...] = ()
+    range_ends_k: RangeEnds = RangeEnds()
 
     @property
     def unsolved_px(self) -> int:
@@ -443,6 +455,9 @@ class Region:
     cut_by_frame: bool = False
     ring_delta_k: float = 0.0
     """Height over the smooth background at the extreme, K; signed."""
+    defective_px: tuple[tuple[int, int], ...] = ()
+    """x, y of pixels taken as defective within the 3 x 3 of the extreme or of a like component's:
+    left out where the value is measured."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -568,6 +583,11 @@ class Finding:
     """95 % interval of the extreme temperature, degC."""
     assessments: tuple[Assessment, ...] = ()
 
+    @property
+    def every_caution(self) -> tuple[str, ...]:
+        """Its cautions and those of its assessments."""
+        return (*self.cautions, *(text for each in self.assessments for text in each.cautions))
+
 
 @dataclass(frozen=True, slots=True)
 class VariableWords:
@@ -649,6 +669,11 @@ class ImageResult:
     """Of groups of zones, or of the image as a whole."""
     pixel_m: float | None = None
     """Width of a pixel's footprint at the distance of the whole image, seen squarely, m."""
+
+    @property
+    def every_caution(self) -> tuple[str, ...]:
+        """Its cautions and those of its assessments, without those of its findings."""
+        return (*self.cautions, *(text for each in self.assessments for text in each.cautions))
 
 
 @dataclass(frozen=True, slots=True)

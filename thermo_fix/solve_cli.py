@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from thermo_fix.errors import DomainError
+from thermo_fix.terminal import say
 
 if TYPE_CHECKING:
     from thermo_fix.solve import Bench, Solved
@@ -224,25 +225,25 @@ def _show(solved: "Solved", folder: Path | None, write: bool, force: bool) -> No
     unit = f" {solved.unit}" if solved.unit else ""
     digits = solved.digits
     low, high = solved.interval
-    print(f"{solved.name} of {solved.of}: {solved.value:.{digits}f}{unit}")
-    print(f"  standard uncertainty {solved.u:.{digits}f} (k = 1)")
-    print(f"  95 % interval {low:.{digits}f} to {high:.{digits}f}{unit}")
+    say(f"{solved.name} of {solved.of}: {solved.value:.{digits}f}{unit}")
+    say(f"  standard uncertainty {solved.u:.{digits}f} (k = 1)")
+    say(f"  95 % interval {low:.{digits}f} to {high:.{digits}f}{unit}")
     for line in solved.inputs:
-        print(f"  from {line}")
-    print(f"  procedure: {solved.procedure}")
+        say(f"  from {line}")
+    say(f"  procedure: {solved.procedure}")
     largest = max(solved.parts.values(), default=0.0)
     for name, part in list(solved.parts.items())[:_LISTED_PARTS]:
         if part > 0.0 and part >= _PART_SHARE * largest:
-            print(f"  contribution {part:.{digits + 1}f} from {name}")
+            say(f"  contribution {part:.{digits + 1}f} from {name}")
     for caution in solved.cautions:
-        print(f"  caution: {caution}")
+        say(f"  caution: {caution}")
     if written is not None:
-        print(f"written to {written}:")
+        say(f"written to {written}:")
     elif solved.place is not None:
         where = f"[[image]] {solved.place.file}"
         if solved.place.zone is not None:
             where += f", zone {solved.place.zone}"
-        print(f"for the sheet, at {where}:")
+        say(f"for the sheet, at {where}:")
     else:
-        print("for the sheet:")
-    print(f"  {solved.sheet_line}")
+        say("for the sheet:")
+    say(f"  {solved.sheet_line}")

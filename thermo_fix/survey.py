@@ -1,10 +1,13 @@
 """The run: the work for every image, then the report and the results, and nothing else."""
 
 import hashlib
-from collections.abc import Callable, Iterator, Mapping
+import os
+from collections import Counter
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from contextlib import ExitStack
 from dataclasses import dataclass, replace
 from datetime import UTC, datetime
-from pathlib import Path
+from pathlib import Path, PurePosixPath
 
 from thermo_fix import cautions
 from thermo_fix.cluster import cluster_executor
@@ -17,7 +20,7 @@ from thermo_fix.criteria import (
     all_criteria,
     load_criteria,
 )
-from thermo_fix.errors import FolderError
+from thermo_fix.errors import FolderError, SheetError, reason_of
 from thermo_fix.grade import conditions
 from thermo_fix.pool import (
     default_jobs,
@@ -30,19 +33,36 @@ from thermo_fix.read import list_images
 from thermo_fix.read.moment import image_moment
 from thermo_fix.read.response import read_response
 from thermo_fix.read.weather import read_weather
-from thermo_fix.records import ImageResult, Survey, SurveyResult
+from thermo_fix.records import Survey, SurveyResult
 from thermo_fix.report import CriterionText, Pictures, write_report
 from thermo_fix.report.archive import pictures_from_files
-from thermo_fix.results import Staging, findings_document, write_document, write_table
+from thermo_fix.results import (
+    Staging,
+    findings_document,
+    recover,
+    write_document,
+    write_table,
+)
 from thermo_fix.results.kept import load_kept
 from thermo_fix.results.workshop import Workshop
-from thermo_fix.sheet import assumption_notes, load_survey
-from thermo_fix.work import PLANE_NAMES, ImageTask, Outcome, plane_path, process_image
+from thermo_fix.sheet import SHEET_NAME, assumption_notes, load_survey
+from thermo_fix.sheet.toml_text import MAX_BYTES
+from thermo_fix.work import (
+    PLANE_NAMES,
+    ImageTask,
+    Outcome,
+    failed_image,
+    files_of,
+    plane_path,
+    process_image,
+)
 
 RESULTS_NAME = "results"
 """Name of the results folder inside the survey folder, where no other is given."""
 
 _WHAT = {"building": "building", "electrical": "electrical installation"}
+_LONGEST_NAME = 255
+"""Bytes that usual file systems take for a name."""
 _WORTH_A_POOL = 8
 """Images from which starting worker processes pays."""
 
@@ -65,6 +85,8 @@ class RunOptions:
     """Write corrected and uncertainty planes."""
     pictures: bool = True
     """Put pictures into the report."""
+    debug: bool = False
+    """Show on standard error where in the program an image failed, and stop at a fault of it."""
 
 
 DEFAULT_OPTIONS = RunOptions()
@@ -134,24 +156,47 @@ def run_survey(
     Raises
     ------
     FolderError, SheetError
-        The survey cannot be run; nothing was written.
+        The survey cannot be run; nothing was written, and an older result is as it was.
 
     """
     folder = Path(folder)
-    target = folder / RESULTS_NAME if out is None else Path(out)
+    try:
+        return _run(folder, _target(folder, out), options, progress)
+    except BrokenPipeError:
+        raise
+    except OSError as error:
+        # A full disk, a network drive that is gone.
+        where = folder if error.filename is None else os.fsdecode(error.filename)
+        raise FolderError(f"{where}: cannot be used ({reason_of(error)})") from error
+
+
+def _target(folder: Path, out: Path | str | None) -> Path:
+    if out is not None:
+        return Path(out).resolve()
+    target = folder / RESULTS_NAME
+    if target.is_symlink():
+        raise FolderError(f"{target}: is a link; give --out the folder that it leads to")
+    return target
+
+
+def _run(
+    folder: Path, target: Path, options: RunOptions, progress: Progress | None
+) -> SurveyResult:
+    before = _sheet_bytes(folder)
     survey = open_survey(folder)
-    if folder.resolve().is_relative_to(target.resolve()):
-        raise FolderError(
-            f"{target}: holds the survey, and results replace a folder as a whole; "
-            "give another --out"
-        )
+    _refuse_overlap(survey, target)
     criteria = load_criteria(survey.criteria, survey.criteria_file)
     response_file = survey.camera.response_file
     response = None if response_file is None else read_response(response_file)
     radiation_models(survey.model, survey.camera, response)
     run_time = datetime.now(UTC).isoformat(timespec="seconds")
-    sheet = None if survey.sheet is None else survey.sheet.read_bytes()
-    with Staging(target) as staging, Workshop(target, fresh=options.fresh) as workshop:
+    sheet = None if survey.sheet is None else _sheet_bytes(folder)
+    if sheet != before:
+        raise SheetError(f"{SHEET_NAME}: changed while it was read; run again")
+    with ExitStack() as stack:
+        workshop = stack.enter_context(Workshop(target, fresh=options.fresh))
+        recover(target)
+        staging = stack.enter_context(Staging(target))
         older = target if target.is_dir() and not options.fresh else None
         tasks = _tasks(survey, criteria, response, workshop.folder, older, options)
         total = len(survey.images)
@@ -188,6 +233,30 @@ def run_survey(
         staging.finish()
         workshop.close()
     return result
+
+
+def _sheet_bytes(folder: Path) -> bytes | None:
+    """Return the sheet as it stands; None where there is none that could be read."""
+    file = folder / SHEET_NAME
+    if not file.is_file() or file.stat().st_size > MAX_BYTES:
+        return None
+    return file.read_bytes()
+
+
+def _refuse_overlap(survey: Survey, target: Path) -> None:
+    """Refuse a results folder that holds what the survey is made of: it would be replaced."""
+    folder, place = survey.folder.resolve(), target.resolve()
+    advice = "and results replace a folder as a whole; give another --out"
+    if folder.is_relative_to(place):
+        raise FolderError(f"{target}: holds the survey, {advice}")
+    if not place.is_relative_to(folder):
+        return
+    within = f"{place.relative_to(folder).as_posix()}/"
+    for job in survey.images:
+        for path in files_of(job):
+            name = path.relative_to(survey.folder).as_posix()
+            if name.startswith(within):
+                raise FolderError(f"{target}: holds {name}, which the sheet names, {advice}")
 
 
 def _states_limit(survey: Survey) -> bool:
@@ -237,17 +306,10 @@ def _outcomes(
 
 
 def _lost(task: ImageTask) -> Outcome:
-    return Outcome(
-        ImageResult(
-            file=task.job.file,
-            status="failed",
-            error=f"{task.job.file}: its worker process ended before the image was done, twice; "
-            "run again, with --jobs 1 to see why",
-            asset=task.job.asset,
-            note=task.job.note,
-            zones=task.job.zones,
-        ),
-        None,
+    return failed_image(
+        task.job,
+        "its worker process ended before the image was done, twice; run again, with --jobs 1 to "
+        "see why",
     )
 
 
@@ -290,19 +352,30 @@ def _tasks(
             plane_name=names[job.file],
             planes=options.planes,
             pictures=options.pictures,
+            debug=options.debug,
         )
 
 
-def _plane_names(files: list[str]) -> dict[str, str]:
-    """Name the planes after their images; two images of one stem keep their endings."""
-    stems = [str(Path(file).with_suffix("")) for file in files]
-    counts: dict[str, int] = {}
-    for stem in stems:
-        counts[stem.casefold()] = counts.get(stem.casefold(), 0) + 1
-    return {
-        file: f"{file if counts[stem.casefold()] > 1 else stem}.tif"
-        for file, stem in zip(files, stems, strict=True)
-    }
+def _plane_names(files: Sequence[str]) -> dict[str, str]:
+    """Name the planes after their images, below the folder of the planes.
+
+    Two images of one stem keep their endings; a name that is none gets a number.
+    """
+    stems = [str(PurePosixPath(file).with_suffix("")) for file in files]
+    counts = Counter(stem.casefold() for stem in stems)
+    names: dict[str, str] = {}
+    taken: set[str] = set()
+    for number, (file, stem) in enumerate(zip(files, stems, strict=True), 1):
+        name = f"{file if counts[stem.casefold()] > 1 else stem}.tif"
+        inside = ".." not in PurePosixPath(name).parts and not PurePosixPath(name).is_absolute()
+        short = all(len(os.fsencode(part)) <= _LONGEST_NAME for part in name.split("/"))
+        if not inside or not short:
+            name = f"image {number}.tif"
+        while name.casefold() in taken:
+            name = f"other {name}"
+        names[file] = name
+        taken.add(name.casefold())
+    return names
 
 
 def _known_criteria(file: Path | None) -> tuple[str, ...]:

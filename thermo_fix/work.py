@@ -9,19 +9,32 @@ import hashlib
 import json
 import os
 import shutil
+import stat
+import traceback
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
 from numpy.typing import NDArray
 
+from thermo_fix import cautions
 from thermo_fix.correct import correct_frame, planes_of, radiation_models
 from thermo_fix.criteria import Criterion
-from thermo_fix.errors import ThermoFixError, about_file
+from thermo_fix.errors import (
+    ImageError,
+    SurveyError,
+    ThermoFixError,
+    UnreadableImage,
+    about_file,
+    one_line,
+    reason_of,
+)
 from thermo_fix.find import find_regions
 from thermo_fix.grade import grade_finding
 from thermo_fix.measure import assess_image, measure_image, measure_regions
-from thermo_fix.read import read_frame, reading_k
+from thermo_fix.read import DEFAULT_LIMITS, read_frame, reading_k
+from thermo_fix.read.photo import read_photo
 from thermo_fix.records import (
     Camera,
     CorrectedFrame,
@@ -35,6 +48,7 @@ from thermo_fix.report.archive import pictures_to_files
 from thermo_fix.results import write_plane
 from thermo_fix.results.kept import KeptImage, canonical, keep_image, key_of, load_kept
 from thermo_fix.sheet import check_polygon, label_zones, overlap_notes
+from thermo_fix.sheet.files import leads_outside
 from thermo_fix.version import __version__
 
 PLANE_NAMES = ("corrected", "uncertainty")
@@ -62,6 +76,8 @@ class ImageTask:
     """Whether corrected and uncertainty planes are wanted."""
     pictures: bool = True
     """Whether pictures are wanted."""
+    debug: bool = False
+    """Whether to show where in the program an image failed, and to stop at a fault of it."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -91,23 +107,73 @@ def process_image(task: ImageTask) -> Outcome:
     """
     job = task.job
     try:
-        key = _key(task)
+        check_place(job, task.survey)
+        hashes = {path: _file_hash(path) for path in files_of(job)}
+        key = _key(task, hashes)
         found = _taken_over(task, key)
         if found is not None:
             return Outcome(replace(found.result, photo=job.photo, zones=job.zones), key, True)
         kept = _compute(task, key)
-    except ThermoFixError as error:
-        failed = ImageResult(
+        _refuse_changed(job, hashes, kept.result.sha256)
+    except SurveyError:
+        raise  # as where the disk is full: no image would fare better
+    except Exception as error:
+        if task.debug:
+            traceback.print_exception(error)
+        if task.debug and not isinstance(error, ThermoFixError | OSError | MemoryError):
+            raise
+        return failed_image(job, _reason(error))
+    keep_image(task.work, key, kept)
+    return Outcome(kept.result, key)
+
+
+def failed_image(job: ImageJob, reason: str) -> Outcome:
+    """Return what is said of an image that cannot be used."""
+    return Outcome(
+        ImageResult(
             file=job.file,
             status="failed",
-            error=about_file(job.file, str(error)),
+            error=about_file(job.file, one_line(reason)),
             asset=job.asset,
             note=job.note,
             zones=job.zones,
+        ),
+        None,
+    )
+
+
+def _reason(error: Exception) -> str:
+    if isinstance(error, ThermoFixError):
+        return str(error)
+    if isinstance(error, OSError):
+        return f"cannot be read ({reason_of(error)}); check its permissions and its disk"
+    if isinstance(error, MemoryError):
+        return "too large for the memory of this computer; run with --jobs 1"
+    return (
+        f"a fault of this program ({type(error).__name__}: {error}); please report it with what "
+        "thermo-fix --debug run shows"
+    )
+
+
+def check_place(job: ImageJob, survey: Survey) -> None:
+    """Raise UnreadableImage where a link leads from the image's name out of the survey folder."""
+    if leads_outside(survey.folder.resolve(), job.file):
+        raise UnreadableImage(
+            "a link leads out of the survey folder; copy the file into the folder"
         )
-        return Outcome(failed, None)
-    keep_image(task.work, key, kept)
-    return Outcome(kept.result, key)
+
+
+def _refuse_changed(job: ImageJob, hashes: Mapping[Path, str], decoded: str | None) -> None:
+    """Refuse work on files that are no longer those that its key speaks of."""
+    changed = [path for path in files_of(job) if path != job.path]
+    changed = [path for path in changed if _file_hash(path) != hashes[path]]
+    if decoded != hashes[job.path]:
+        changed.insert(0, job.path)
+    if changed:
+        about = "" if changed[0] == job.path else f"{changed[0].name} "
+        raise UnreadableImage(
+            f"{about}changed while it was read; wait until nothing writes to it, and run again"
+        )
 
 
 def plane_path(work: Path, key: str, name: str) -> Path:
@@ -119,8 +185,6 @@ def _compute(task: ImageTask, key: str) -> KeptImage:
     job, camera, purpose = task.job, task.survey.camera, task.survey.purpose
     corrected, notes = correct_image(job, task.survey, task.response)
     found = find_regions(corrected)
-    if found.spikes:
-        notes = (*notes, f"{found.spikes} isolated pixels were bridged when looking for findings.")
     if found.unlike:
         notes = (
             *notes,
@@ -128,8 +192,13 @@ def _compute(task: ImageTask, key: str) -> KeptImage:
         )
     measured = measure_regions(corrected, found.regions, camera, str(task.number), purpose)
     settings = task.survey.criteria_settings
+    summed = measure_image(corrected, notes, camera)
+    if found.spikes:
+        summed = replace(
+            summed, cautions=(*summed.cautions, cautions.defective_pixels(found.spikes))
+        )
     result = replace(
-        measure_image(corrected, notes, camera),
+        summed,
         findings=tuple(grade_finding(each, task.criteria, settings) for each in measured),
         assessments=assess_image(corrected, measured, purpose),
         photo=job.photo,
@@ -141,14 +210,23 @@ def _compute(task: ImageTask, key: str) -> KeptImage:
     if task.pictures:
         pictures = encode_pictures(planes, result)
         if job.photo is not None:
-            photo = encode_photo(job.photo)
-            if photo is None:
-                note = f"{job.photo.name}: the photograph cannot be read and is left out."
+            photo, note = _photo(job.photo)
+            pictures = replace(pictures, photo_jpeg=photo)
+            if note is not None:
                 result = replace(result, notes=(*result.notes, note))
-            else:
-                pictures = replace(pictures, photo_jpeg=photo)
         files |= pictures_to_files(pictures)
     return KeptImage(result, files)
+
+
+def _photo(path: Path) -> tuple[bytes | None, str | None]:
+    """Return a photograph for the report, or a note on why there is none."""
+    name = one_line(path.name)
+    try:
+        photo = encode_photo(read_photo(path))
+    except ImageError as error:
+        return None, f"{name}: the photograph is left out: {error}."
+    note = f"{name}: the photograph cannot be read and is left out."
+    return photo, note if photo is None else None
 
 
 def _write_planes(task: ImageTask, key: str, corrected: CorrectedFrame, planes: Planes) -> bytes:
@@ -204,7 +282,7 @@ def _link(source: Path, target: Path) -> None:
         partial.replace(target)
 
 
-def _key(task: ImageTask) -> str:
+def _key(task: ImageTask, hashes: Mapping[Path, str]) -> str:
     """Return the key of an image: its content, its inputs, the software."""
     folder = task.survey.folder
     parts = [
@@ -216,11 +294,12 @@ def _key(task: ImageTask) -> str:
         canonical(task.response),
         canonical([task.planes, task.pictures]),
     ]
-    parts += [_file_hash(path).encode() for path in _files_of(task.job)]
+    parts += [hashes[path].encode() for path in files_of(task.job)]
     return key_of(parts)
 
 
-def _files_of(job: ImageJob) -> list[Path]:
+def files_of(job: ImageJob) -> list[Path]:
+    """Return the files that the result of an image depends on, its own first."""
     files = [job.path]
     if job.photo is not None:
         files.append(job.photo)
@@ -232,8 +311,15 @@ def _files_of(job: ImageJob) -> list[Path]:
 
 
 def _file_hash(path: Path) -> str:
-    """Return the SHA-256 of a regular file; ``absent`` where it is none."""
-    if not path.is_file():
+    """Return the SHA-256 of a file; ``absent`` where it is no regular file, or one too large.
+
+    What is wrong with such a file is said by whoever reads it.
+    """
+    try:
+        facts = path.stat()
+    except (FileNotFoundError, NotADirectoryError):
+        return "absent"
+    if not stat.S_ISREG(facts.st_mode) or facts.st_size > DEFAULT_LIMITS.max_file_bytes:
         return "absent"
     with path.open("rb") as stream:
         return hashlib.file_digest(stream, "sha256").hexdigest()

@@ -52,7 +52,7 @@ def point_at(page: Any, image: int, x: int, y: int, plane: str = "c") -> None:
     text = f"Column {x}, row {y}"
     page.wait_for_function(
         "([image, text]) => document.querySelector("
-        "`[data-bench=\"p${image}\"] [data-show=\"readout\"]`).textContent.startsWith(text)",
+        '`[data-bench="p${image}"] [data-show="readout"]`).textContent.startsWith(text)',
         arg=[image, text],
     )
 
@@ -189,7 +189,8 @@ def test_keyboard_alone_reads_pins_and_draws(demos: Any, visit: Any) -> None:
     else:
         pytest.fail("Tab does not reach the picture")
     page.wait_for_function(
-        "() => document.querySelector('[data-bench=\"p1\"] [data-show=\"spoken\"]').textContent !== ''"
+        "() => document.querySelector("
+        "'[data-bench=\"p1\"] [data-show=\"spoken\"]').textContent !== ''"
     )
     begun = readout(page, 1)
     assert (begun["x"], begun["y"]) == (160, 120)
@@ -282,7 +283,8 @@ def test_colour_map_and_span_for_one_image_and_for_all(demos: Any, visit: Any) -
     bench.locator('[data-do="high"]').fill("60")
     bench.locator('[data-do="high"]').press("Tab")
     page.wait_for_function(
-        "() => document.querySelector('[data-scale=\"p1\"]').getAttribute('aria-label').includes('60')"
+        "() => document.querySelector("
+        "'[data-scale=\"p1\"]').getAttribute('aria-label').includes('60')"
     )
     plane = tifffile.imread(results / "corrected" / "IR_0201.tif")
     for x, y in ((160, 139), (10, 10), (80, 200)):

@@ -1,4 +1,4 @@
-"""What of an image may be wrong although it has a number: blanks, ends of the range, assumptions."""
+"""What of an image may be wrong though it has a number: blanks, ends of range, assumptions."""
 
 from collections.abc import Sequence
 from typing import Literal, NamedTuple
@@ -61,10 +61,8 @@ def range_ends_k(
     if finite.size == 0:
         return RangeEnds()
     least, greatest = _pile(finite, "least"), _pile(finite, "greatest")
-    if np.issubdtype(frame.values.dtype, np.integer):
-        # The values with a positive scale, which all encodings in use have.
-        last = np.iinfo(frame.values.dtype).max
-        at_end = frame.values == last
+    if np.issubdtype(frame.values.dtype, np.integer) and frame.encoding.scale > 0.0:
+        at_end = frame.values == np.iinfo(str(frame.values.dtype)).max
         if left_out is not None:
             at_end &= ~left_out
         if at_end.any():

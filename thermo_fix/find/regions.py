@@ -73,7 +73,24 @@ def find_regions(corrected: CorrectedFrame) -> Found:
     referred = [_with_like(corrected, temperature, usable, region) for region in regions]
     local = [region for region in referred if region is not None]
     whole = _whole_zones(corrected, temperature, usable, senses, local)
-    return Found((*local, *whole), sigma, spikes, len(referred) - len(local))
+    every = (*local, *whole)
+    if spikes:
+        bridged = usable & (temperature != corrected.surface_k)
+        every = tuple(_with_defective(region, bridged) for region in every)
+    return Found(every, sigma, spikes, len(referred) - len(local))
+
+
+def _with_defective(region: Region, bridged: MaskArray) -> Region:
+    """Name the bridged pixels beside the places where the region is measured."""
+    places = [region.extreme_px]
+    if region.reference_kind == "like component":
+        places += region.reference_px
+    found: dict[tuple[int, int], None] = {}
+    for x, y in places:
+        top, left = max(0, y - 1), max(0, x - 1)
+        for row, column in np.argwhere(bridged[top : y + 2, left : x + 2]).tolist():
+            found[(left + column, top + row)] = None
+    return replace(region, defective_px=tuple(found))
 
 
 def _searched(corrected: CorrectedFrame, label: int, usable: MaskArray) -> MaskArray:

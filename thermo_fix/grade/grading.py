@@ -5,6 +5,7 @@ most probable grade is printed, with the chance of a higher one and the input th
 it. Unrounded values are compared.
 """
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
 
@@ -25,6 +26,8 @@ from thermo_fix.uncertainty.estimate import Estimate
 from thermo_fix.uncertainty.variables import SEED, Shape, standard_deviates
 
 NO_GRADE = "none"
+UNKNOWN = "a known uncertainty"
+"""What a quantity lacks of which most draws have no solution."""
 _DOUBT_WORTH_SETTLING = 0.02
 _GAIN_WORTH_NAMING = 0.01
 """A smaller change of a chance lies within the scatter of the draws."""
@@ -121,6 +124,9 @@ def _grading(
         lacking += measured.missing.get(criterion.quantity, ())
     if criterion.side == "inside" and measured.inside is None:
         lacking += [key for key in measured.missing.get("side", ("side",)) if key not in lacking]
+    if estimate is not None and math.isnan(estimate.u):
+        # A grade is a probability, and there is none: neither "act" nor "no deficiency".
+        lacking.append(UNKNOWN)
     words = _QUANTITY_WORDS[criterion.quantity]
     if criterion.quantity in ("difference", "like_difference"):
         words = f"difference to {measured.finding.reference_name}"

@@ -20,6 +20,7 @@ from thermo_fix.measure.spot import (
 )
 from thermo_fix.measure.trade import Measured
 from thermo_fix.measure.words import camera_words, input_words, place_words, where_words
+from thermo_fix.radiometry.blackbody import BAND_RANGE_K
 from thermo_fix.radiometry.path import seen_map
 from thermo_fix.radiometry.surface import (
     MEASURABLE_FOOTPRINTS,
@@ -98,7 +99,13 @@ def _measure(
     equation = corrected.equations[region.label]
     inputs = corrected.inputs[region.label]
     where = where_words(corrected, region.label)
-    spot = spot_at_extreme(corrected, f"finding {identity}", region.label, region.extreme_px)
+    spot = spot_at_extreme(
+        corrected,
+        f"finding {identity}",
+        region.label,
+        region.extreme_px,
+        region.defective_px,
+    )
     extreme = temperature_of(spot, equation)
     words = _words(corrected, spot, where)
     reference_spot = _reference_spot(corrected, region, identity)
@@ -148,9 +155,9 @@ def _measure(
         budget=_budget(extreme, words),
         delta_budget=() if difference is None else _budget(difference, words),
         apparent_c=_apparent_c(corrected, spot),
-        model_difference_k=None if alternative is None else alternative * math.sqrt(3.0),
+        model_difference_k=None if alternative is None else _finite(alternative * math.sqrt(3.0)),
         method="first order" if extreme.is_linear else "Monte Carlo",
-        interval_c=extreme.interval(),
+        interval_c=None if math.isnan(extreme.u) else extreme.interval(),
     )
     extras = _TRADES[purpose].finding_extras(
         Measured(
@@ -190,6 +197,7 @@ def _reference_spot(corrected: CorrectedFrame, region: Region, identity: str) ->
             f"zone {zone} of {corrected.job.file}, {region.sense}",
             region.reference_label,
             region.reference_px[0],
+            region.defective_px,
         )
     where = np.zeros(corrected.labels.shape, bool)
     columns, rows = np.array(region.reference_px).T
@@ -229,6 +237,9 @@ def _with_model_gap(words: dict[str, VariableWords], extreme: Estimate) -> dict[
 def _budget(estimate: Estimate, words: Mapping[str, VariableWords]) -> tuple[BudgetLine, ...]:
     lines = []
     for name, part in estimate.contributions.items():
+        if not math.isfinite(part):
+            # Not known, and with it the uncertainty; a caution says so.
+            continue
         each = words[name]
         sensitivity = part / each.u if each.u > 0.0 else 0.0
         lines.append(
@@ -315,7 +326,10 @@ def _cautions(
         and abs(finding.extreme_c - reflected) < _NEAR_REFLECTED_K
     ):
         found.append(cautions.near_reflected(finding.extreme_c - reflected))
-    if not extreme.is_linear:
+    found += _extreme_cautions(corrected, region)
+    if math.isnan(extreme.u):
+        found.append(_no_uncertainty(corrected, region, extreme))
+    elif not extreme.is_linear:
         lost = float(np.mean(~np.isfinite(extreme.draws)))
         if lost > 0.0:
             found.append(cautions.lost_draws(lost))
@@ -324,9 +338,34 @@ def _cautions(
         zone = corrected.job.zones[region.label - 1]
         if zone.load_a is not None and zone.rated_a and zone.load_a / zone.rated_a < LEAST_LOAD:
             found.append(cautions.low_load(zone.load_a / zone.rated_a))
-    if difference is not None and not abs(difference.value) > 2.0 * difference.u:
-        found.append(cautions.inside_noise(difference.value, difference.u))
+    if difference is not None:
+        if math.isnan(difference.u):
+            found.append(cautions.no_difference_uncertainty(difference.value))
+        elif abs(difference.value) <= 2.0 * difference.u:
+            found.append(cautions.inside_noise(difference.value, difference.u))
     return tuple(found)
+
+
+def _extreme_cautions(corrected: CorrectedFrame, region: Region) -> list[str]:
+    """Say whether the extreme rests on readings that are none."""
+    found = []
+    if region.defective_px:
+        found.append(cautions.defective_extreme())
+    ends = corrected.range_ends_k
+    end_k = ends.greatest_k if region.sense == "hot" else ends.least_k
+    x, y = region.extreme_px
+    window = corrected.reading_k[max(0, y - 1) : y + 2, max(0, x - 1) : x + 2]
+    if end_k is not None and np.any(window == np.float32(end_k)):
+        found.append(cautions.saturated_extreme(region.sense))
+    return found
+
+
+def _no_uncertainty(corrected: CorrectedFrame, region: Region, extreme: Estimate) -> str:
+    low, high = (edge - ZERO_CELSIUS_K for edge in BAND_RANGE_K)
+    alternative = corrected.equations[region.label].alternative
+    if alternative is not None and not low <= extreme.value <= high:
+        return cautions.beyond_band_tables(extreme.value, low, high)
+    return cautions.no_uncertainty()
 
 
 def _least_extent(mask: MaskArray) -> tuple[int, int]:

@@ -37,8 +37,8 @@ def measure_image(
     Returns
     -------
     ImageResult
-        Least, median and greatest surface temperature leave out ignored zones; the median is
-        that of the rest of the image where zones do not cover it, with its uncertainty.
+        Least, median and greatest surface temperature leave out ignored zones; the uncertainty
+        of the median is that of the zone, or the rest of the image, with the most pixels.
 
     """
     job, frame = corrected.job, corrected.frame
@@ -63,8 +63,7 @@ def measure_image(
     if not usable.any():
         return result
     surface = corrected.surface_k[usable].astype(np.float64) - ZERO_CELSIUS_K
-    rest = usable & (corrected.labels == 0)
-    label = 0 if rest.any() else int(corrected.labels[usable][0])
+    label = int(np.argmax(np.bincount(corrected.labels[usable])))
     where = usable & (corrected.labels == label)
     median = temperature_of(
         spot_of_median(corrected, f"median of {job.file}", label, where),

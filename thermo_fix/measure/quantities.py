@@ -169,6 +169,8 @@ def _moist_draws(
 def _dew_point_margin(extreme: Estimate, indoor: Input, humid: Input) -> Estimate:
     """Surface temperature minus dew point of the indoor air, K."""
     dew = float(moist.dew_point_c(indoor.value, humid.value))
+    if math.isnan(dew):
+        raise DomainError(f"a dew point below {moist.RANGE_C[0]:g} degC is not computed")
     step = 1e-3
     by_air = float(
         moist.dew_point_c(indoor.value + step, humid.value)

@@ -1,6 +1,7 @@
 """A spot: a place of an image whose surface temperature is estimated with its uncertainty."""
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -45,12 +46,25 @@ class Spot:
 
 
 def spot_at_extreme(
-    corrected: CorrectedFrame, name: str, label: int, place: tuple[int, int]
+    corrected: CorrectedFrame,
+    name: str,
+    label: int,
+    place: tuple[int, int],
+    without: Sequence[tuple[int, int]] = (),
 ) -> Spot:
-    """Return the spot at the extreme of a region (see the extreme module)."""
+    """Return the spot at the extreme of a region (see the extreme module).
+
+    Defective pixels (x, y) are left out, unless there is no other.
+    """
     usable = np.isfinite(corrected.surface_k) & (corrected.labels == label)
-    extreme = extreme_value(corrected.reading_k, usable, place)
     x, y = place
+    if without:
+        sound = usable.copy()
+        columns, rows = np.array(without).T
+        sound[rows, columns] = False
+        if sound[max(0, y - 1) : y + 2, max(0, x - 1) : x + 2].any():
+            usable = sound
+    extreme = extreme_value(corrected.reading_k, usable, place)
     emissivity = corrected.emissivity_planes.get(label)
     reflected = corrected.reflected_planes.get(label)
     return Spot(

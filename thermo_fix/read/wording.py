@@ -2,6 +2,8 @@
 
 from pathlib import Path
 
+from thermo_fix.errors import one_line
+
 LONGEST_QUOTE = 60
 
 
@@ -11,13 +13,7 @@ def shown(name: str | Path) -> str:
     A file name may hold a line break, a control character or bytes that are no text; those are
     shown as escapes.
     """
-    text = name.name if isinstance(name, Path) else name
-    return "".join(
-        character
-        if character.isprintable()
-        else character.encode("unicode_escape", "surrogatepass").decode("ascii")
-        for character in text
-    )
+    return one_line(name.name if isinstance(name, Path) else name)
 
 
 def quoted(value: object) -> str:

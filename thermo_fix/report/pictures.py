@@ -13,7 +13,6 @@ import struct
 import zlib
 from dataclasses import dataclass
 from functools import lru_cache
-from pathlib import Path
 from typing import Final
 
 import cv2
@@ -232,15 +231,12 @@ def decode_data(data: DataPlane) -> NDArray[np.float64]:
     return np.where(counts == 0, np.nan, values)
 
 
-def encode_photo(path: Path, *, longest_px: int = 1200) -> bytes | None:
+def encode_photo(content: bytes, *, longest_px: int = 1200) -> bytes | None:
     """A visible photograph, reduced and as JPEG without the camera's tags.
 
-    None if the file is missing or is no picture.
+    None if the bytes are no picture.
     """
-    try:
-        raw = np.frombuffer(path.read_bytes(), np.uint8)
-    except OSError:
-        return None
+    raw = np.frombuffer(content, np.uint8)
     if raw.size == 0:
         return None
     try:

@@ -270,7 +270,9 @@ class SurveyViews:
             *cautions.general(self._result.survey.purpose),
             self._words("caution.conditions"),
         )
-        return tuple(dict.fromkeys((*standing, *self._result.cautions)))
+        every = dict.fromkeys((*standing, *self._result.cautions))
+        # Standing cautions are safety matters: a catalogue translates them by their own words.
+        return tuple(self._words.of("standing", text) for text in every)
 
     # ------------------------------------------------------------ one image
 

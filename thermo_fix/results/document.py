@@ -78,7 +78,8 @@ def findings_document(
 def write_document(path: Path, document: dict[str, Any]) -> None:
     """Write a document as UTF-8 JSON, one key a line, without NaN."""
     text = json.dumps(document, ensure_ascii=False, indent=1, allow_nan=False)
-    path.write_text(text + "\n", encoding="utf-8", newline="\n")
+    # A file name that is no text keeps its odd bytes as JSON escapes.
+    path.write_text(text + "\n", encoding="utf-8", errors="backslashreplace", newline="\n")
 
 
 def _image(image: ImageResult) -> dict[str, Any]:

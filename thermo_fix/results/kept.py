@@ -10,15 +10,16 @@ import dataclasses
 import datetime as calendar
 import hashlib
 import json
-import os
+import secrets
 import zipfile
 from collections.abc import Iterable, Mapping
 from functools import cache
 from pathlib import Path
 from typing import Any
 
-from pydantic import TypeAdapter, ValidationError
+from pydantic import TypeAdapter
 
+from thermo_fix.errors import FolderError, reason_of
 from thermo_fix.records import ImageResult
 
 _EPOCH = (1980, 1, 1, 0, 0, 0)
@@ -54,15 +55,20 @@ def canonical(record: Any, base: Path | None = None) -> bytes:
 
 
 def keep_image(folder: Path, key: str, kept: KeptImage) -> None:
-    """Write a finished image, atomically; the same content gives the same bytes."""
+    """Write a finished image, atomically; the same content gives the same bytes.
+
+    Raises FolderError where it cannot be written.
+    """
     path = folder / f"{key}.zip"
-    partial = folder / f"{key}.{os.getpid()}.partial"
+    partial = folder / f"{key}.{secrets.token_hex(6)}.partial"
     try:
-        with zipfile.ZipFile(partial, "w", zipfile.ZIP_STORED) as archive:
+        with zipfile.ZipFile(partial, "x", zipfile.ZIP_STORED) as archive:
             content = {_RESULT: canonical(kept.result), **kept.files}
             for name in sorted(content):
                 archive.writestr(zipfile.ZipInfo(name, _EPOCH), content[name])
         partial.replace(path)
+    except OSError as error:
+        raise FolderError(f"{folder}: cannot be written ({reason_of(error)})") from error
     finally:
         with contextlib.suppress(OSError):
             partial.unlink(missing_ok=True)
@@ -92,7 +98,8 @@ def load_kept(folder: Path, key: str, names: Iterable[str] | None = None) -> Kep
             result = _adapter().validate_python(json.loads(archive.read(_RESULT)))
             wanted = set(archive.namelist()) - {_RESULT} if names is None else set(names)
             return KeptImage(result, {name: archive.read(name) for name in sorted(wanted)})
-    except (OSError, KeyError, ValueError, zipfile.BadZipFile, ValidationError):
+    except Exception:
+        # Whatever damage makes of it: zlib.error, EOFError, RecursionError, NotImplementedError ..
         return None
 
 

@@ -5,6 +5,7 @@ and 3 (floating-point predictor, code 3).
 """
 
 import contextlib
+import secrets
 from collections.abc import Iterable
 from io import BytesIO
 from pathlib import Path
@@ -14,7 +15,7 @@ import numpy as np
 import tifffile
 from numpy.typing import NDArray
 
-from thermo_fix.errors import FolderError, UnreadableImage
+from thermo_fix.errors import FolderError, UnreadableImage, reason_of
 from thermo_fix.version import __version__
 
 SOFTWARE: Final = f"thermo_fix {__version__}"
@@ -56,15 +57,15 @@ def write_plane(
         maxworkers=1,
         extratags=[(*tag, True) for tag in sorted(carried_tags, key=lambda tag: tag[0])],
     )
-    partial = path.with_name(f".{path.name}.part")
+    # A name of its own for each writer: one of a run that was killed may still be at work.
+    partial = path.with_name(f".{path.name}.{secrets.token_hex(6)}.part")
     try:
         partial.write_bytes(buffer.getbuffer())
         partial.replace(path)
     except OSError as error:
         with contextlib.suppress(OSError):
             partial.unlink()
-        reason = (error.strerror or "unknown reason").lower()
-        raise FolderError(f"{path}: cannot be written ({reason})") from error
+        raise FolderError(f"{path}: cannot be written ({reason_of(error)})") from error
 
 
 def read_plane(path: Path) -> NDArray[np.float32]:

@@ -1,6 +1,5 @@
 """A results folder that is complete or not there."""
 
-import contextlib
 import os
 import shutil
 import tempfile
@@ -8,7 +7,8 @@ from pathlib import Path
 from types import TracebackType
 from typing import Self
 
-from thermo_fix.errors import FolderError
+from thermo_fix.errors import FolderError, reason_of
+from thermo_fix.results.moving import flush_folder, flush_tree, swap
 
 MARK = "findings.json"
 """A folder that holds this file, or nothing, may be replaced."""
@@ -42,13 +42,10 @@ class Staging:
                 )
         try:
             target.parent.mkdir(parents=True, exist_ok=True)
-            self.folder = Path(
-                tempfile.mkdtemp(prefix=f".{target.name}.partial-", dir=target.parent)
-            )
+            self.folder = Path(tempfile.mkdtemp(prefix=_unfinished(target), dir=target.parent))
         except OSError as error:
             raise FolderError(
-                f"{target.parent}: cannot be written ({(error.strerror or 'error').lower()}); "
-                "give another --out"
+                f"{target.parent}: cannot be written ({reason_of(error)}); give another --out"
             ) from error
         # mkdtemp makes a private folder; results are as readable as other files.
         mask = os.umask(0)
@@ -68,30 +65,69 @@ class Staging:
             shutil.rmtree(self.folder, ignore_errors=True)
 
     def finish(self) -> None:
-        """Move the results into place.
+        """Move the results into place, once every byte of them is on the disk.
+
+        Where the system can, new and old results change places in one step; else the old ones step
+        aside first, and :func:`recover` puts them back should the run end between the two.
 
         Raises
         ------
         FolderError
-            They cannot be moved; an older result is then left as it was.
+            They cannot be written to the end or moved; an older result is then left as it was.
 
         """
-        older = self._target.with_name(f".{self._target.name}.replaced-{self.folder.name[-8:]}")
+        older = self._target.with_name(f"{_aside(self._target)}{self.folder.name[-8:]}")
         try:
-            replaces = self._target.exists()
-            if replaces:
-                self._target.rename(older)
-            try:
+            flush_tree(self.folder)
+            if not self._target.exists():
                 self.folder.rename(self._target)
-            except OSError:
-                if replaces:
+            elif swap(self.folder, self._target):
+                older = self.folder
+            else:
+                self._target.rename(older)
+                try:
+                    self.folder.rename(self._target)
+                except OSError:
                     older.rename(self._target)
-                raise
+                    raise
         except OSError as error:
             raise FolderError(
-                f"{self._target}: cannot be put into place "
-                f"({(error.strerror or 'error').lower()}); close what uses it and run again"
+                f"{self._target}: cannot be put into place ({reason_of(error)}); "
+                "make room or close what uses it, and run again"
             ) from error
         self._done = True
-        with contextlib.suppress(OSError):
-            shutil.rmtree(older)
+        flush_folder(self._target.parent)
+        shutil.rmtree(older, ignore_errors=True)
+
+
+def recover(target: Path) -> None:
+    """Clear up after runs that were killed; call it only while no other run is at work.
+
+    A result that stepped aside for one that never came is put back; what was not finished, and
+    results that were replaced, are thrown away.
+
+    Raises OSError where the folder cannot be read or the result cannot be put back.
+    """
+    if not target.parent.is_dir():
+        return
+    beside = sorted(target.parent.iterdir())
+    for folder in beside:
+        if not folder.name.startswith(_aside(target)) or folder.is_symlink():
+            continue
+        if not target.exists() and (folder / MARK).is_file():
+            folder.rename(target)
+        else:
+            shutil.rmtree(folder, ignore_errors=True)
+    for folder in beside:
+        if folder.name.startswith(_unfinished(target)) and not folder.is_symlink():
+            shutil.rmtree(folder, ignore_errors=True)
+
+
+def _unfinished(target: Path) -> str:
+    """First part of the name of a folder that is being filled."""
+    return f".{target.name}.partial-"
+
+
+def _aside(target: Path) -> str:
+    """First part of the name of a result that has stepped aside for another."""
+    return f".{target.name}.replaced-"

@@ -2,6 +2,7 @@
 
 import csv
 import math
+import unicodedata
 from pathlib import Path
 
 from thermo_fix.records import Finding, SurveyResult
@@ -34,16 +35,18 @@ COLUMNS = (
     "settle",
     "cautions",
 )
-_FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")
+_FORMULA_STARTS = ("=", "+", "-", "@")
 
 
 def write_table(path: Path, result: SurveyResult) -> None:
     """Write the findings as UTF-8 CSV (RFC 4180), worst first.
 
-    A text that a spreadsheet would take for a formula is preceded by an apostrophe.
+    A text that a spreadsheet would take for a formula is preceded by an apostrophe. Every cell
+    stands in quotation marks: a spreadsheet that separates at semicolons or tabs splits none.
     """
-    with path.open("w", encoding="utf-8", newline="") as stream:
-        writer = csv.writer(stream)
+    # A file name that is no text keeps its odd bytes as escapes.
+    with path.open("w", encoding="utf-8", errors="backslashreplace", newline="") as stream:
+        writer = csv.writer(stream, quoting=csv.QUOTE_ALL)
         writer.writerow(COLUMNS)
         for finding in result.findings:
             writer.writerow(_row(finding))
@@ -71,7 +74,7 @@ def _row(finding: Finding) -> list[str]:
         finding.grade or "",
         _number(finding.grade_probability, 3),
         _number(finding.worse_probability, 3),
-        finding.criterion or "",
+        _text(finding.criterion or ""),
         _text(finding.settle),
         _text(" ".join(finding.cautions)),
     ]
@@ -82,4 +85,17 @@ def _number(value: float | None, digits: int) -> str:
 
 
 def _text(text: str) -> str:
-    return f"'{text}" if text.startswith(_FORMULA_STARTS) else text
+    return f"'{text}" if _is_like_formula(text) else text
+
+
+def _is_like_formula(text: str) -> bool:
+    """Whether a spreadsheet might compute a text; it may pass over what cannot be seen.
+
+    Full-width and small forms count as the signs that they stand for.
+    """
+    for character in text:
+        if character in "\t\r\n":
+            return True
+        if character.isprintable() and not character.isspace():
+            return unicodedata.normalize("NFKC", character).startswith(_FORMULA_STARTS)
+    return False

@@ -1,12 +1,13 @@
 """The folder in which finished images wait until all are done."""
 
 import contextlib
+import os
 import shutil
 from pathlib import Path
 from types import TracebackType
-from typing import IO, Self
+from typing import Self
 
-from thermo_fix.errors import FolderError
+from thermo_fix.errors import FolderError, reason_of
 
 try:
     import fcntl
@@ -35,17 +36,20 @@ class Workshop:
         self.folder = target.with_name(f".{target.name}.work")
         # Beside the folder, not in it, so that the folder can be thrown away while it is held.
         self._lock_path = target.with_name(f".{target.name}.lock")
-        self._lock: IO[str] | None = None
+        self._lock: int | None = None
         try:
+            target.parent.mkdir(parents=True, exist_ok=True)
             self._take_lock(target)
+            if self.folder.is_symlink():
+                # A link would lead our files to wherever somebody wanted them.
+                self.folder.unlink()
             if fresh:
                 shutil.rmtree(self.folder, ignore_errors=True)
             self.folder.mkdir(exist_ok=True)
         except OSError as error:
             self._release()
             raise FolderError(
-                f"{self.folder}: cannot be written ({(error.strerror or 'error').lower()}); "
-                "give another --out"
+                f"{self.folder}: cannot be written ({reason_of(error)}); give another --out"
             ) from error
 
     def __enter__(self) -> Self:
@@ -67,23 +71,38 @@ class Workshop:
         shutil.rmtree(self.folder, ignore_errors=True)
 
     def _take_lock(self, target: Path) -> None:
-        self._lock = self._lock_path.open("a")
-        if fcntl is None:
-            return
-        try:
-            # Held by the process: it dies with its owner.
-            fcntl.flock(self._lock, fcntl.LOCK_EX | fcntl.LOCK_NB)
-        except BlockingIOError as error:
-            self._lock.close()
+        while True:
+            # A link or a pipe of this name is not followed and not waited for.
+            flags = os.O_RDWR | os.O_CREAT | getattr(os, "O_NOFOLLOW", 0)
+            self._lock = os.open(self._lock_path, flags | getattr(os, "O_NONBLOCK", 0), 0o666)
+            if fcntl is None:
+                return
+            try:
+                # Held by the process: it dies with its owner.
+                fcntl.flock(self._lock, fcntl.LOCK_EX | fcntl.LOCK_NB)
+            except BlockingIOError as error:
+                os.close(self._lock)
+                self._lock = None
+                raise FolderError(
+                    f"{target}: another run is at work on these results; wait for it, "
+                    "or give another --out"
+                ) from error
+            if self._is_in_place(self._lock):
+                return
+            # The run before us took the file away after we had opened it.
+            os.close(self._lock)
             self._lock = None
-            raise FolderError(
-                f"{target}: another run is at work on these results; wait for it, "
-                "or give another --out"
-            ) from error
+
+    def _is_in_place(self, lock: int) -> bool:
+        try:
+            there = self._lock_path.lstat()
+        except FileNotFoundError:
+            return False
+        return os.path.samestat(there, os.fstat(lock))
 
     def _release(self) -> None:
         if self._lock is not None:
             with contextlib.suppress(OSError):
                 self._lock_path.unlink()
-            self._lock.close()
+            os.close(self._lock)
             self._lock = None

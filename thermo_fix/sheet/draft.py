@@ -85,6 +85,7 @@ def _survey(title: str, facts: Sequence[FileFacts]) -> str:
             date,
             _question('surveyor = ""', "who took the images"),
             _question('temperature_unit = "celsius"', 'of the report: "celsius" or "fahrenheit"'),
+            _question('language = "en"', 'of the report: "en" or "de"'),
             _question('weather = "weather.csv"', "log with time, air_c, humidity, wind_m_s"),
             _question("utc_offset_hours = 1.0", "of the images' clock, if the log differs"),
         )

@@ -209,6 +209,7 @@ class _SheetLoader:
             date=survey.date,
             surveyor=survey.surveyor,
             temperature_unit=survey.temperature_unit,
+            language=survey.language,
             notes=self._notes(survey, camera_table, images, unnamed),
         )
 

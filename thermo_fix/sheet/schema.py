@@ -14,7 +14,7 @@ from pydantic import model_validator as check_whole
 from pydantic_core import PydanticCustomError
 
 from thermo_fix.limits import UnknownLimit, find_limit, stated_limit
-from thermo_fix.records import Limit, ModelName, PixelUnit, Purpose, Side, TemperatureUnit
+from thermo_fix.records import Language, Limit, ModelName, PixelUnit, Purpose, Side, TemperatureUnit
 from thermo_fix.sheet import files, ranges, zones
 from thermo_fix.sheet.lines import KeyPath
 from thermo_fix.surfaces import Surface, UnknownSurface, find_surface
@@ -434,6 +434,7 @@ class SurveyTable(Table):
         | None
     ) = None
     temperature_unit: Annotated[TemperatureUnit, _one_of("celsius", "fahrenheit")] = "celsius"
+    language: Annotated[Language, _one_of("en", "de")] = "en"
 
 
 class RecordedTable(Table):
