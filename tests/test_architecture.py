@@ -35,6 +35,7 @@ BELOW_STAGES = PHYSICS | {
     "limits",
     "records",
     "surfaces",
+    "text_file",
     "version",
 }
 
@@ -52,7 +53,8 @@ MAY_IMPORT: dict[str, set[str]] = {
     "uncertainty": {"constants", "errors", "radiometry"},
     # What is handed on, and the tables that speak of it.
     "records": {"uncertainty"},
-    "criteria": {"errors", "records"},
+    "text_file": {"errors"},
+    "criteria": {"errors", "records", "text_file"},
     "limits": {"errors", "records"},
     # The stages.
     **dict.fromkeys(STAGES, BELOW_STAGES),
@@ -65,10 +67,11 @@ MAY_IMPORT: dict[str, set[str]] = {
     "solve": BELOW_STAGES | STAGES | {"work", "survey"},
     # What sits on top, and holds no physics.
     "demo": {"errors"},
-    "solve_cli": {"errors", "solve"},
+    "terminal": {"errors"},
+    "solve_cli": {"errors", "solve", "terminal"},
     "cli": (BELOW_STAGES - PHYSICS)
     | STAGES
-    | {"demo", "point", "pool", "cluster", "solve", "solve_cli", "survey", "work"},
+    | {"demo", "point", "pool", "cluster", "solve", "solve_cli", "survey", "terminal", "work"},
     "__main__": {"cli"},
     "__init__": {"point", "survey", "version"},
 }
@@ -94,6 +97,8 @@ LATE_IMPORTS = {
     "solve_cli.py": "--help has to answer at once",
     "cluster.py": "the extra may not be installed",
     "pool.py": "only a worker sets the threads of a library",
+    "uncertainty/propagation.py": "point has to answer at once",
+    "uncertainty/variables.py": "point has to answer at once",
 }
 """Files in which an import may stand inside a function, and the reason."""
 

@@ -149,7 +149,7 @@ CASES = {
     "small and at the edge": Case(
         TOLD,
         {"a.tif": spot(6.0, np.s_[0:12, 30:42]), "b.tif": spot(9.0, np.s_[30:33, 40:43])},
-        ("cut-by-frame", "too-small"),
+        ("cut-by-frame", "too-small", "shape-no-proof", "shape-cut"),
     ),
     "hardly known": Case(
         changed(TOLD, emissivity="{ value = 0.2, u = 0.05 }", reflected_c="{ value = 20, u = 6 }"),
@@ -165,8 +165,9 @@ CASES = {
             reflected_c="{ value = 20, u = 9 }",
             air_c="40.0",
             distance_m="2.0\ntransmittance = { value = 0.999, u = 0.1 }",
-        ),
-        {"a.tif": spot(-3.3)},
+        )
+        + '[radiation]\nmodel = "band"\n',
+        {"a.tif": spot(-2.0)},
         ("no-uncertainty",),
     ),
     "uneven": Case(
@@ -419,7 +420,7 @@ def test_the_command_counts_what_has_cautions(
     tmp_path: Path, capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
 ) -> None:
     write_image(tmp_path / "a.tif", spot(6.0, np.s_[0:12, 30:42]))
-    write_image(tmp_path / "b.tif", spot(6.0))
+    write_image(tmp_path / "b.tif", spot(0.0))
     (tmp_path / "survey.toml").write_text(TOLD, encoding="utf-8")
     monkeypatch.setattr("sys.argv", ["thermo-fix", "run", str(tmp_path), "--no-pictures"])
     with pytest.raises(SystemExit) as leave:

@@ -5,13 +5,13 @@ import hashlib
 import json
 import math
 import re
-from collections.abc import Callable
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import replace
 from datetime import date, datetime
 from functools import lru_cache
 from itertools import pairwise
 from pathlib import Path
-from typing import Any
+from typing import Any, get_args
 
 import html5lib
 import pytest
@@ -24,10 +24,11 @@ from thermo_fix.records import (
     Figure,
     Finding,
     ImageResult,
+    Language,
     Planes,
     SurveyResult,
 )
-from thermo_fix.report import CriterionText, write_report
+from thermo_fix.report import CriterionText, Pictures, encode_pictures, write_report
 from thermo_fix.report.catalogue import Words, load_words
 from thermo_fix.report.drawing import crop, marks, outline, shares, ticks
 from thermo_fix.report.formatting import Units, fixed, iso, measured, percent, shortest
@@ -350,6 +351,8 @@ def test_words_are_complete_and_none_is_idle() -> None:
                 families.add(key)
             else:
                 keys.add(key)
+    # Standing cautions are translated by their own English words.
+    families.remove("standing")
     catalogue = load_words().keys
     assert keys <= catalogue
     idle = {
@@ -359,6 +362,54 @@ def test_words_are_complete_and_none_is_idle() -> None:
     }
     assert idle == set()
     assert families <= {key.partition(".")[0] for key in catalogue}
+
+
+def test_the_script_uses_its_words_and_no_others() -> None:
+    source = (FOLDER / "static" / "report.js").read_text(encoding="utf-8")
+    used = set(re.findall(r"\bwords\.(\w+)", source))
+    assert used == set(load_words().family("reader"))
+
+
+@pytest.mark.parametrize("language", [path.stem for path in FOLDER.glob("words/*.toml")])
+def test_every_language_has_every_word_with_its_fields(language: str) -> None:
+    english, other = load_words(), load_words(language)
+    keys = {key for key in other.keys if not key.startswith("standing.")}
+    assert keys == english.keys
+    for key in keys:
+        fields = [sorted(re.findall(r"\{(\w+)\}", words(key))) for words in (english, other)]
+        assert fields[0] == fields[1], key
+        assert bool(english(key)) == bool(other(key)) or key == "page.quoted"
+    if language != "en":
+        for purpose in ("electrical", "building"):
+            for caution in cautions.general(purpose):
+                assert other.of("standing", caution) != caution
+
+
+def test_languages_are_those_of_the_sheet() -> None:
+    assert {path.stem for path in FOLDER.glob("words/*.toml")} == set(get_args(Language))
+
+
+def german() -> tuple[SurveyResult, dict[str, Planes]]:
+    result, planes = fake.electrical()
+    return replace(result, survey=replace(result.survey, language="de")), planes
+
+
+def test_german_has_decimal_commas_and_says_what_stays_english(tmp_path: Path) -> None:
+    page = page_of(german(), tmp_path / "r.html")
+    html = next(element for element in elements(page) if local(element.tag) == "html")
+    assert html.get("lang") == "de"
+    text = text_of(html)
+    for words in ("72,4 °C ± 2,8 K", "Handlungsbedarf", "Im englischen Wortlaut", "2026-02-03"):
+        assert words in text.replace("\u00a0", " ")
+    assert "Bei Volllast: handeln." in text
+    result, _ = german()
+    for caution in cautions.general("electrical"):
+        assert load_words("de").of("standing", caution) in text
+        assert caution not in text
+    views = SurveyViews(result, load_words("de"), version="1").report()
+    assert views.findings[0].temperature is not None
+    assert views.findings[0].temperature.value == "72,4"
+    assert views.findings[1].budgets[0].rows[1].sensitivity.endswith("je 0,01")
 
 
 @pytest.mark.parametrize(
@@ -457,6 +508,145 @@ def test_missing_inputs_of_a_criterion_are_named() -> None:
     assert finding.grade == "ungraded"
     assert finding.gradings[0].needs == ("needs air temperature on the path (air_c), load (load_a)")
     assert "needs air temperature" in finding.ungraded_why
+
+
+def test_worse_grade_under_other_conditions_is_said_in_one_line(tmp_path: Path) -> None:
+    finding = finding_of(fake.electrical(), "IR_0007-2")
+    assert finding.grade == "plan"
+    assert finding.worse_elsewhere == ("At full load: act.",)
+    other = finding.gradings[-1]
+    assert (other.scenario, other.decides, other.grade) == ("full load", False, "act")
+    assert finding_of(fake.electrical(), "IR_0007-1").worse_elsewhere == ()
+    page = page_of(fake.electrical(), tmp_path / "r.html")
+    cards = [e for e in elements(page) if "card" in (e.get("class") or "").split()]
+    assert any("At full load: act." in text_of(card) for card in cards)
+
+
+def test_assessments_are_printed_with_their_evidence(tmp_path: Path) -> None:
+    finding = finding_of(fake.electrical(), "IR_0007-1")
+    (load,) = finding.assessments
+    assert load.statement.startswith("The load was 62 A.")
+    assert [(row.label, row.value) for row in load.figures] == [
+        ("load", "62.0\u00a0A\u00a0±\u00a02.0\u00a0A"),
+        ("difference at full load", "90\u00a0K\u00a0±\u00a016\u00a0K"),
+        ("share of the rated current", "0.62"),
+        ("wind", "not known"),
+    ]
+    page = page_of(fake.electrical(), tmp_path / "r.html")
+    found = elements(page)
+    sections = [e for e in found if "assessment" in (e.get("class") or "").split()]
+    assert len(sections) == 2
+    for section in sections:
+        for words in ("The exponent is common practice.", "exponent 1.6", "no source"):
+            assert words in text_of(section)
+    card = next(e for e in found if "card" in (e.get("class") or "").split())
+    assert "At full load the difference would be about 90 K." in text_of(card)
+    assert "exponent 1.6" not in text_of(card)
+
+
+def test_band_model_is_stated_on_each_finding(tmp_path: Path) -> None:
+    page = page_of(fake.electrical(), tmp_path / "r.html")
+    sections = [e for e in elements(page) if "finding" in (e.get("class") or "").split()]
+    assert len(sections) == 4
+    for section in sections:
+        assert "+0.4 K if the 8–14 µm or stated band model is used" in text_of(section).replace(
+            "\u00a0", " "
+        )
+
+
+def test_camera_and_limits_are_printed() -> None:
+    result, _ = fake.electrical()
+    survey = replace(result.survey, criteria_settings={"absolute_limit_c": 70.0})
+    view = SurveyViews(replace(result, survey=survey), load_words(), version="1").report()
+    rows = {row.label: row.value for row in view.camera}
+    assert rows["spectral band of the camera"] == "8–14\u00a0µm"
+    assert rows["accuracy of the camera"] == "2\u00a0K"
+    assert rows["emissivity recorded by the camera"] == "1"
+    assert [(row.label, row.value) for row in view.settings] == [("absolute_limit_c", "70")]
+
+
+# ---------------------------------------------------------------- large surveys
+
+
+def large(number: int) -> tuple[SurveyResult, dict[str, Planes]]:
+    """The first fake image, ``number`` times."""
+    result, planes = fake.electrical()
+    first = result.images[0]
+    images = tuple(
+        replace(
+            first,
+            file=f"IR_{n:05d}.tif",
+            findings=tuple(
+                replace(f, id=f"{n}.{k}", image=f"IR_{n:05d}.tif")
+                for k, f in enumerate(first.findings)
+            ),
+        )
+        for n in range(1, number + 1)
+    )
+    plane = planes[first.file]
+    return replace(result, images=images), {image.file: plane for image in images}
+
+
+class Counted(Mapping[str, Pictures]):
+    """Pictures that count how often they were asked for."""
+
+    def __init__(self, pictures: Pictures, files: list[str]) -> None:
+        self.pictures = pictures
+        self.files = files
+        self.asked = 0
+
+    def __getitem__(self, file: str) -> Pictures:
+        self.asked += 1
+        # For the cards of the entry page; the pages themselves are quicker without.
+        if self.asked > MOST_CARDS:
+            raise KeyError(file)
+        return self.pictures
+
+    def __iter__(self) -> Iterator[str]:
+        return iter(self.files)
+
+    def __len__(self) -> int:
+        return len(self.files)
+
+
+def test_a_large_survey_has_an_entry_page_and_a_page_for_each_image(tmp_path: Path) -> None:
+    result, planes = large(7)
+    pictures = fake.pictures_of(result, planes)
+    path = tmp_path / "report.html"
+    options: dict[str, Any] = {"sheet_text": None, "run_time": "x"}
+    write_report(result, pictures, path, **options, images_per_page=7)
+    assert not (tmp_path / "pages").exists()
+    write_report(result, pictures, path, **options, images_per_page=6, single_file=True)
+    assert not (tmp_path / "pages").exists()
+    write_report(result, pictures, path, **options, images_per_page=6)
+    names = sorted(each.name for each in (tmp_path / "pages").iterdir())
+    wanted = [f"{n:04d}.html" for n in range(1, 8)]
+    assert names == [*wanted, "findings-001.html", "images-001.html"]
+    assert sorted(each.name for each in tmp_path.iterdir()) == ["pages", "report.html"]
+    for file in [path, *(tmp_path / "pages").iterdir()]:
+        for element in elements(file.read_text(encoding="utf-8")):
+            href = element.get("href") or ""
+            if local(element.tag) != "a" or href.startswith("#"):
+                continue
+            target, _, anchor = href.partition("#")
+            aim = (file.parent / target).resolve()
+            assert aim.is_file(), href
+            if anchor:
+                assert f'id="{anchor}"' in aim.read_text(encoding="utf-8"), href
+
+
+def test_the_entry_page_of_a_thousand_images_is_small(tmp_path: Path) -> None:
+    result, planes = large(1000)
+    file = result.images[0].file
+    one = encode_pictures(planes[file], result.images[0])
+    pictures = Counted(one, [image.file for image in result.images])
+    write_report(result, pictures, tmp_path / "report.html", sheet_text=None, run_time="x")
+    # Given by the specification: under 2 MB.
+    assert (tmp_path / "report.html").stat().st_size < 2_000_000
+    assert len(list((tmp_path / "pages").glob("[0-9]*.html"))) == 1000
+    assert pictures.asked <= 1000 + MOST_CARDS
+    for name in ("findings-001.html", "findings-002.html", "images-001.html"):
+        assert (tmp_path / "pages" / name).is_file()
 
 
 def test_summary_states_the_finding() -> None:

@@ -19,6 +19,7 @@ from thermo_fix.demo import demo_surveys
 from thermo_fix.errors import FolderError
 from thermo_fix.records import Finding, ImageResult, SurveyResult
 from thermo_fix.results import Staging, findings_document, write_document, write_table
+from thermo_fix.results import staging as staging_module
 from thermo_fix.results.table import COLUMNS
 from thermo_fix.survey import RunOptions, run_survey
 from thermo_fix.version import __version__
@@ -231,8 +232,8 @@ def table_of(result: SurveyResult, folder: Path) -> list[dict[str, str]]:
 
 def test_columns_carry_their_unit(result: SurveyResult, tmp_path: Path) -> None:
     write_table(tmp_path / "findings.csv", result)
-    header = (tmp_path / "findings.csv").read_text("utf-8").splitlines()[0]
-    assert header == ",".join(COLUMNS)
+    with (tmp_path / "findings.csv").open(encoding="utf-8", newline="") as stream:
+        assert next(csv.reader(stream)) == list(COLUMNS)
     texts = {"id", "image", "zone", "sense", "reference_kind", "reference", "grade"}
     texts |= {"criterion", "settle", "cautions"}
     for column in set(COLUMNS) - texts:
@@ -265,13 +266,48 @@ def only_finding(result: SurveyResult, **changes: Any) -> SurveyResult:
     return replace(result, images=(replace(image, findings=(changed,)),))
 
 
-@pytest.mark.parametrize("start", ["=", "+", "-", "@", "\t", "\r"])
+STARTS = [
+    "=",
+    "+",
+    "-",
+    "@",
+    "\t",
+    "\r",
+    "\n",
+    " =",
+    "\xa0=",
+    "\u200b=",
+    "\ufeff=",
+    "\x00=",
+    "\x1b@",
+]
+STARTS += ["＝", "＋", "－", "＠", "﹢", "\u3000＝", " \n"]
+
+
+@pytest.mark.parametrize("start", STARTS)
 def test_no_text_becomes_a_formula(result: SurveyResult, tmp_path: Path, start: str) -> None:
     text = f"{start}HYPERLINK(1)"
     changes = {"zone": text, "reference_name": text, "settle": text, "cautions": (text,)}
     (row,) = table_of(only_finding(result, **changes), tmp_path)
     for column in ("zone", "reference", "settle", "cautions"):
         assert row[column] == f"'{text}"
+
+
+@pytest.mark.parametrize("mark", [";", "\t", ","])
+def test_no_text_splits_a_row_of_a_spreadsheet(
+    result: SurveyResult, tmp_path: Path, mark: str
+) -> None:
+    write_table(tmp_path / "findings.csv", only_finding(result, zone=f'a"{mark}=HYPERLINK(1)'))
+    lines = (tmp_path / "findings.csv").read_text("utf-8").splitlines()
+    # A spreadsheet that separates at this mark.
+    cells = list(csv.reader(lines, delimiter=mark))[1]
+    assert not any(cell.startswith("=") for cell in cells)
+
+
+@pytest.mark.parametrize("text", ["lug B", "2 = 1", "a-b", "Ü", "端子", "", "'=1", "#1", "%"])
+def test_plain_text_is_left_as_it_is(result: SurveyResult, tmp_path: Path, text: str) -> None:
+    (row,) = table_of(only_finding(result, zone=text), tmp_path)
+    assert row["zone"] == text
 
 
 def test_negative_numbers_stay_numbers(result: SurveyResult, tmp_path: Path) -> None:
@@ -362,9 +398,14 @@ def test_without_finish_nothing_appears(tmp_path: Path) -> None:
     assert list(tmp_path.iterdir()) == []
 
 
+def unable_to_swap(first: Path, second: Path) -> bool:
+    return False
+
+
 def test_a_failing_move_puts_the_older_result_back(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
+    monkeypatch.setattr(staging_module, "swap", unable_to_swap)
     target = tmp_path / "results"
     complete(target)
     before = files_below(tmp_path)

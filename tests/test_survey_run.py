@@ -1,5 +1,6 @@
 """The run as a whole: what it writes, that it repeats, and what it does when something fails."""
 
+import csv
 import json
 import re
 import shutil
@@ -84,9 +85,10 @@ def test_json_and_csv_of_a_run(tmp_path: Path) -> None:
     assert {finding["id"] for finding in content["findings"]} == {
         finding.id for finding in result.findings
     }
-    lines = (folder / "results" / "findings.csv").read_text("utf-8").splitlines()
-    assert lines[0].split(",") == list(COLUMNS)
-    assert len(lines) == 3
+    with (folder / "results" / "findings.csv").open(encoding="utf-8", newline="") as stream:
+        rows = list(csv.reader(stream))
+    assert rows[0] == list(COLUMNS)
+    assert len(rows) == 3
 
 
 def test_planes_have_the_shape_and_the_holes_of_the_image(tmp_path: Path) -> None:

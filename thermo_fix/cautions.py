@@ -136,8 +136,9 @@ def no_reading(pixels: int) -> str:
 def unknown_uncertainty(pixels: int, low_c: float, high_c: float) -> str:
     """Pixels with a temperature whose uncertainty cannot be told."""
     return (
-        f"{pixels} pixels have a surface temperature, but no uncertainty: the band model, to which "
-        f"the difference is a part of it, is tabulated from {low_c:.0f} to {high_c:.0f} degC."
+        f"{pixels} pixels have a surface temperature, but no uncertainty: the difference to the "
+        "band model is a part of it, and that model gives them no temperature (it is tabulated "
+        f"from {low_c:.0f} to {high_c:.0f} degC)."
     )
 
 
@@ -216,6 +217,18 @@ def defective_extreme() -> str:
     )
 
 
+@_caution("shape-no-proof")
+def shape_no_proof() -> str:
+    """Pattern that the shape of a finding resembles."""
+    return "A shape is no proof of a cause: confirm by other means before anything is opened."
+
+
+@_caution("shape-cut")
+def shape_cut() -> str:
+    """Pattern of a region at the edge of the image."""
+    return "The region is cut by the edge of the image, and its shape is not whole."
+
+
 @_caution("cut-by-frame")
 def cut_by_frame() -> str:
     """Region at the edge of the image."""
@@ -270,10 +283,11 @@ def no_uncertainty() -> str:
 
 @_caution("beyond-band-tables")
 def beyond_band_tables(value_c: float, low_c: float, high_c: float) -> str:
-    """Temperature of the total model beyond the tables of the band model."""
+    """Temperature of the total model for which the band model has none."""
     return (
-        f"At {value_c:.0f} degC the uncertainty is not known: the radiation-model difference is a "
-        f"part of it, and the band model is tabulated from {low_c:.0f} to {high_c:.0f} degC."
+        f"At {value_c:.0f} degC the uncertainty is not known: the difference to the band model is "
+        "a part of it, and that model gives no temperature here (it is tabulated from "
+        f"{low_c:.0f} to {high_c:.0f} degC)."
     )
 
 

@@ -9,7 +9,7 @@ import shlex
 import shutil
 import sys
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated, NoReturn
+from typing import TYPE_CHECKING, Annotated, Literal, NoReturn
 
 import typer
 
@@ -19,6 +19,7 @@ from thermo_fix.terminal import problem, say, several_lines, trace
 from thermo_fix.version import __version__
 
 if TYPE_CHECKING:
+    from thermo_fix.report.pdf import Paper
     from thermo_fix.sheet import FileFacts
     from thermo_fix.survey import RunOptions
 
@@ -96,6 +97,13 @@ def run(
     no_pictures: Annotated[
         bool, typer.Option("--no-pictures", help="Leave the pictures out of the report.")
     ] = False,
+    pdf: Annotated[
+        bool, typer.Option("--pdf", help="Print the report to report.pdf with Chromium.")
+    ] = False,
+    paper: Annotated[
+        str | None,
+        typer.Option(help="A4 or letter, for --pdf; by default what goes with the report's unit."),
+    ] = None,
 ) -> None:
     """Do the whole job: correct, find, grade, and write the report.
 
@@ -115,7 +123,9 @@ def run(
         pictures=not no_pictures,
         debug=_Settings.debug,
     )
-    raise typer.Exit(_run(folder, out, quiet, options))
+    if paper not in (None, "A4", "letter"):
+        _fail(f'--paper {paper}: write "A4" or "letter"')
+    raise typer.Exit(_run(folder, out, quiet, options, _paper(paper) if pdf else None))
 
 
 @app.command()
@@ -336,7 +346,17 @@ def _explain(error: Exception) -> None:
         )
 
 
-def _run(folder: Path, out: Path | None, quiet: bool, options: "RunOptions") -> int:
+def _paper(name: str | None) -> "Paper | Literal['by unit']":
+    return "letter" if name == "letter" else "A4" if name == "A4" else "by unit"
+
+
+def _run(
+    folder: Path,
+    out: Path | None,
+    quiet: bool,
+    options: "RunOptions",
+    paper: "Paper | Literal['by unit'] | None" = None,
+) -> int:
     from thermo_fix.survey import RESULTS_NAME, run_survey
 
     target = folder / RESULTS_NAME if out is None else out
@@ -347,7 +367,12 @@ def _run(folder: Path, out: Path | None, quiet: bool, options: "RunOptions") -> 
         from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn
         from rich.progress import TimeRemainingColumn as Remaining
 
-        columns = (TextColumn("{task.description}", markup=False), BarColumn(), MofNCompleteColumn(), Remaining())
+        columns = (
+            TextColumn("{task.description}", markup=False),
+            BarColumn(),
+            MofNCompleteColumn(),
+            Remaining(),
+        )
         with Progress(*columns, console=Console(stderr=True), transient=True) as bar:
             task = bar.add_task(one_line(folder.name), total=None)
             result = run_survey(
@@ -373,6 +398,19 @@ def _run(folder: Path, out: Path | None, quiet: bool, options: "RunOptions") -> 
         if images or findings:
             say(f"  cautions: {images} images, {findings} findings; see the report")
         say(f"  report: {target / 'report.html'}")
+    if paper is not None:
+        from thermo_fix.report.pdf import PrintError, print_pdf
+
+        if paper == "by unit":
+            paper = "letter" if result.survey.temperature_unit == "fahrenheit" else "A4"
+        try:
+            print_pdf(target / "report.html", target / "report.pdf", paper=paper)
+        except PrintError as error:
+            # The survey is done; that it is not printed is no failure of it.
+            problem(str(error))
+        else:
+            if not quiet:
+                say(f"  on paper: {target / 'report.pdf'}")
     return EXIT_SOME_FAILED if result.failed else EXIT_DONE
 
 
@@ -411,12 +449,12 @@ def _facts(folder: Path) -> "list[FileFacts]":
 
 
 def _quoted(path: Path) -> str:
-    """Write a path as a shell takes it."""
+    """Write a path so that a shell takes it as it is."""
     text = str(path)
-    plain = text.replace(" ", "").replace("/", "").replace(os.sep, "").replace("_", "")
-    if plain.replace("-", "").replace(".", "").replace(":", "").isalnum():
-        return f'"{text}"' if " " in text else text
-    return shlex.quote(text)
+    quoted = shlex.quote(text)
+    if quoted == text or set(text) & set('$`"\\!'):
+        return quoted
+    return f'"{text}"'  # which every system's shell understands
 
 
 def _fail(line: str) -> NoReturn:

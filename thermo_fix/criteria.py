@@ -5,8 +5,9 @@ form. A criterion names a quantity, classes with their published wording, and ou
 """
 
 import difflib
-import math
+import sys
 import tomllib
+from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import lru_cache
@@ -17,8 +18,9 @@ from typing import Any, Literal, cast, get_args
 import numpy as np
 from numpy.typing import NDArray
 
-from thermo_fix.errors import SheetError
+from thermo_fix.errors import SheetError, one_line
 from thermo_fix.records import GRADES, Grade, Purpose, Sense
+from thermo_fix.text_file import read_text_file
 
 QuantityName = Literal[
     "like_difference",
@@ -48,6 +50,9 @@ DEFAULT_USE: Mapping[Purpose, tuple[str, ...]] = {
 
 LIMIT_CRITERION = "absolute-limit"
 """Joins those of an electrical survey whose sheet names no criteria and states a limit."""
+
+_MOST_BYTES = 1024**2
+"""Of a survey's own file of criteria."""
 
 _CRITERION_KEYS = {
     "id",
@@ -171,13 +176,9 @@ def all_criteria(file: Path | None = None) -> tuple[Criterion, ...]:
     """
     known = dict(built_in())
     if file is not None:
-        try:
-            text = file.read_text("utf-8")
-        except (OSError, UnicodeDecodeError) as error:
-            raise SheetError(
-                f"{file.name}: cannot be read ({type(error).__name__}); "
-                "give a UTF-8 TOML file in the survey folder"
-            ) from error
+        text = read_text_file(
+            file, _MOST_BYTES, "a file of criteria", "leave out what the survey does not use"
+        )
         known |= {each.id: each for each in parse_criteria(text, file.name)}
     return tuple(known.values())
 
@@ -202,7 +203,7 @@ def load_criteria(names: Sequence[str], file: Path | None = None) -> tuple[Crite
     chosen = []
     for name in names:
         if name not in known:
-            near = difflib.get_close_matches(name, known, 1, 0.4)
+            near = difflib.get_close_matches(name[:80], known, 1, 0.4)
             hint = f'; nearest: "{near[0]}"' if near else ""
             raise SheetError(
                 f'survey.toml: [criteria] use names "{name}", which is no criterion{hint}; '
@@ -230,15 +231,17 @@ def parse_criteria(text: str, file: str) -> tuple[Criterion, ...]:
     """
     try:
         document = tomllib.loads(text)
-    except tomllib.TOMLDecodeError as error:
-        raise SheetError(f"{file}: not valid TOML: {error}") from error
+    except RecursionError as error:
+        raise SheetError(f"{file}: brackets are nested too deeply") from error
+    except ValueError as error:  # also integers of thousands of digits
+        raise SheetError(f"{file}: not valid TOML: {one_line(str(error))}") from error
     tables = document.get("criterion")
     if not isinstance(tables, list) or not tables or set(document) != {"criterion"}:
         raise SheetError(f"{file}: must hold [[criterion]] tables and nothing else")
     parsed = [_criterion(table, file, number) for number, table in enumerate(tables, 1)]
     ids = [each.id for each in parsed]
-    for each in ids:
-        if ids.count(each) > 1:
+    for each, times in Counter(ids).items():
+        if times > 1:
             raise SheetError(f'{file}: the id "{each}" stands twice; give each criterion its own')
     return tuple(parsed)
 
@@ -299,7 +302,9 @@ def _setting(table: Any, where: str) -> Setting:
 
 
 def _is_number(value: Any) -> bool:
-    return isinstance(value, int | float) and not isinstance(value, bool) and math.isfinite(value)
+    if isinstance(value, bool) or not isinstance(value, int | float):
+        return False
+    return abs(value) <= sys.float_info.max
 
 
 def _grade_class(table: Any, settings: Mapping[str, Setting], where: str) -> GradeClass:
@@ -338,7 +343,7 @@ def _grade_class(table: Any, settings: Mapping[str, Setting], where: str) -> Gra
 def _no_unknown(table: Mapping[str, Any], known: set[str], where: str) -> None:
     for key in table:
         if key not in known:
-            near = difflib.get_close_matches(key, known, 1)
+            near = difflib.get_close_matches(key[:80], known, 1)
             hint = f'; nearest known key: "{near[0]}"' if near else ""
             raise SheetError(f'{where}: unknown key "{key}"{hint}')
 

@@ -41,9 +41,8 @@ class SheetError(SurveyError):
     """
 
     def __init__(self, problems: str | Sequence[str]) -> None:
-        self.problems: tuple[str, ...] = (
-            (problems,) if isinstance(problems, str) else tuple(problems)
-        )
+        told = (problems,) if isinstance(problems, str) else tuple(problems)
+        self.problems: tuple[str, ...] = tuple(one_line(each) for each in told)
         super().__init__("\n".join(self.problems))
 
 

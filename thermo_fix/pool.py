@@ -7,11 +7,17 @@ task that killed it.
 
 import multiprocessing
 import os
+import signal
+import threading
 from collections import deque
 from collections.abc import Callable, Iterable, Iterator
 from concurrent.futures import BrokenExecutor, Executor, Future, ProcessPoolExecutor
 from contextlib import contextmanager
+from multiprocessing.connection import wait
+from multiprocessing.process import BaseProcess
 from typing import TypeVar
+
+from thermo_fix.errors import SurveyError
 
 Task = TypeVar("Task")
 Done = TypeVar("Done")
@@ -76,7 +82,16 @@ def map_over_pool(
                 task = waiting.popleft() if waiting else next(source, None)
                 if task is None:
                     break
-                flying.append((task, pool.submit(function, task)))
+                try:
+                    flying.append((task, pool.submit(function, task)))
+                except BrokenExecutor:
+                    # A worker died between two tasks of ours. Who killed it is found among those
+                    # in flight; with none there, it was no task.
+                    waiting.appendleft(task)
+                    if flying:
+                        break
+                    pool.shutdown(wait=True, cancel_futures=True)
+                    pool = _new_pool(jobs)
             if not flying:
                 return
             task, future = flying.popleft()
@@ -113,11 +128,11 @@ def map_over_executor(
         task, future = flying.popleft()
         try:
             done = future.result()
-        except Exception as error:
+        except SurveyError:
+            raise  # as where the disk is full
+        except Exception:
             # A cluster gives up on a task whose workers keep dying, with an exception of its
             # own; an error of ours would have come back as a failed image.
-            if isinstance(error, KeyboardInterrupt):
-                raise
             done = lost(task)
         yield task, done
 
@@ -140,9 +155,20 @@ def _new_pool(jobs: int) -> ProcessPoolExecutor:
 
 
 def _start_worker() -> None:
+    # Ctrl-C reaches every process of the terminal; the parent alone decides what it means.
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    parent = multiprocessing.parent_process()
+    if parent is not None:
+        threading.Thread(target=_end_with, args=(parent,), daemon=True).start()
     import cv2
 
     cv2.setNumThreads(1)
+
+
+def _end_with(parent: BaseProcess) -> None:
+    """End this process when its parent is gone, killed without a word to anybody."""
+    wait([parent.sentinel])
+    os._exit(1)
 
 
 @contextmanager

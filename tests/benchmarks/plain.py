@@ -39,8 +39,10 @@ def run(folder: Path, out: Path, sheet: dict[str, Any]) -> None:
         excess = ndimage.median_filter(surface - (terms @ fit).reshape(surface.shape), 3)
         mask = morphology.opening(np.abs(excess) > sheet["detect"]["min_delta_k"], np.ones((3, 3)))
         labels = measure.label(mask)
-        for region in measure.regionprops(labels, surface):
-            findings.append([image["file"], *map(int, region.bbox), float(region.intensity_max)])
+        findings += [
+            [image["file"], *map(int, region.bbox), float(region.intensity_max)]
+            for region in measure.regionprops(labels, surface)
+        ]
         figure = Figure(figsize=(10, 4))
         for place, plane in enumerate((kelvin, surface), 1):
             axes = figure.add_subplot(1, 2, place)

@@ -102,6 +102,18 @@ def test_without_scripts_everything_that_matters_is_there(
 def test_nothing_runs_off_the_side(kind: str, width: int, fakes: Any, visit: Any) -> None:
     # 1280 px at 200 % zoom are 640 CSS px (WCAG 2.2, 1.4.4 and 1.4.10).
     page = visit(fakes[kind], width=width).page
+    pane = page.locator(".pane").first
+    if pane.count():
+        pane.focus()
+        for key in ("Enter", "Shift+ArrowLeft", "Enter", "l", "Shift+ArrowUp", "l"):
+            page.keyboard.press(key)
+        page.locator(".profile figcaption").first.wait_for()
+        clipped = page.evaluate(
+            "() => [...document.querySelectorAll('.main > *, .side > *, .tools, .tools > *, .axes')]"
+            ".map(e => e.getBoundingClientRect().right - "
+            "e.closest('.main, .side').getBoundingClientRect().right).filter(over => over > 1)"
+        )
+        assert clipped == []
     assert page.evaluate("() => document.documentElement.scrollWidth") <= width
 
 

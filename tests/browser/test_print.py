@@ -1,5 +1,6 @@
 """The report on paper: sheets of the right size, numbered, with nothing cut."""
 
+import json
 from pathlib import Path
 from typing import Any
 
@@ -43,7 +44,7 @@ def test_the_printed_report(
     pages = pypdf.PdfReader(pdf).pages
     # Eight and nine images with up to ten findings, their evidence, budgets and inputs in full.
     assert 10 <= len(pages) <= 60
-    pictures = 0
+    whole = 0
     for number, page in enumerate(pages, 1):
         width, height = float(page.mediabox.width), float(page.mediabox.height)
         assert (width * MM_PER_POINT, height * MM_PER_POINT) == pytest.approx(
@@ -54,12 +55,13 @@ def test_the_printed_report(
         assert "Infrared survey report" in text
         assert "Marlhythe" in text
         for left, low, right, high in drawn_pictures(page):
-            pictures += 1
-            assert left >= -0.5
-            assert right <= width + 0.5
-            assert low >= -0.5
-            assert high <= height + 0.5
-    assert pictures >= 14
+            inside = left >= 0.0 and low >= 0.0 and right <= width and high <= height
+            whole += inside
+    # A picture cut by the end of a sheet is drawn on two, on neither whole. Pictures of cards are
+    # windows into larger ones and need not be whole.
+    document = json.loads((demos[survey] / "findings.json").read_text(encoding="utf-8"))
+    done = [image for image in document["images"] if image["status"] == "done"]
+    assert whole >= 2 * len(done)
     text = "".join(page.extract_text() for page in pages)
     for words in ("Sign-off", "Signature", "SHA-256", "Uncertainty budget"):
         assert words in text

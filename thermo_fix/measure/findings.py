@@ -328,7 +328,7 @@ def _cautions(
         found.append(cautions.near_reflected(finding.extreme_c - reflected))
     found += _extreme_cautions(corrected, region)
     if math.isnan(extreme.u):
-        found.append(_no_uncertainty(corrected, region, extreme))
+        found.append(_no_uncertainty(extreme))
     elif not extreme.is_linear:
         lost = float(np.mean(~np.isfinite(extreme.draws)))
         if lost > 0.0:
@@ -360,10 +360,9 @@ def _extreme_cautions(corrected: CorrectedFrame, region: Region) -> list[str]:
     return found
 
 
-def _no_uncertainty(corrected: CorrectedFrame, region: Region, extreme: Estimate) -> str:
-    low, high = (edge - ZERO_CELSIUS_K for edge in BAND_RANGE_K)
-    alternative = corrected.equations[region.label].alternative
-    if alternative is not None and not low <= extreme.value <= high:
+def _no_uncertainty(extreme: Estimate) -> str:
+    if math.isnan(extreme.contributions.get(MODEL, 0.0)):
+        low, high = (edge - ZERO_CELSIUS_K for edge in BAND_RANGE_K)
         return cautions.beyond_band_tables(extreme.value, low, high)
     return cautions.no_uncertainty()
 

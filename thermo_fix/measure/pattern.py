@@ -11,6 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from thermo_fix import cautions
 from thermo_fix.measure.shape import Shape, describe
 from thermo_fix.measure.trade import Measured
 from thermo_fix.records import Assessment, Figure
@@ -116,9 +117,9 @@ def pattern_assessment(measured: Measured) -> Assessment | None:
             f"{pattern.scores[pattern.name]:.2f}; next is {ranked[1]} with "
             f"{pattern.scores[ranked[1]]:.2f}. A suggestion from the shape alone, to be confirmed."
         )
-    found = ["A shape is no proof of a cause: confirm by other means before anything is opened."]
+    found = [cautions.shape_no_proof()]
     if region.cut_by_frame:
-        found.append("The region is cut by the edge of the image, and its shape is not whole.")
+        found.append(cautions.shape_cut())
     return Assessment(
         kind="pattern",
         title="Likely pattern",

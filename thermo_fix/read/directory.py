@@ -7,11 +7,18 @@ import struct
 from dataclasses import dataclass
 from typing import Final
 
+from tifffile import TIFF
+
 from thermo_fix.errors import UnreadableImage
 from thermo_fix.read.limits import ReadLimits
 
 CLASSIC: Final = 42
 BIG: Final = 43
+
+_LOADED: Final = frozenset(TIFF.TAG_LOAD) | frozenset(TIFF.TAG_READERS)
+"""Tags whose values the TIFF library takes into memory as lists of numbers."""
+_BYTES: Final = frozenset({1, 2, 6, 7})
+"""TIFF data types BYTE, ASCII, SBYTE and UNDEFINED: one byte in memory too."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -61,14 +68,30 @@ def walk_directories(content: bytes, limits: ReadLimits) -> Chain:
         end = start + entries * entry_size
         if entries == 0:
             raise UnreadableImage("damaged: a page without any tag")
+        if entries > limits.max_tags:
+            raise UnreadableImage(
+                f"states {entries} tags, more than the limit of {limits.max_tags}"
+            )
         if len(seen) == 1 and end <= len(content):
             first_end = end
-            codes = frozenset(
-                struct.unpack_from(f"{order}H", content, entry)[0]
-                for entry in range(start, end, entry_size)
-            )
+            head = f"{order}HH{'Q' if big else 'I'}"
+            found = [
+                struct.unpack_from(head, content, entry) for entry in range(start, end, entry_size)
+            ]
+            _refuse_long_lists(found, limits)
+            codes = frozenset(code for code, _, _ in found)
         offset = _unpack(offset_format, content, end)
     return Chain(order, len(seen), codes, first_start, first_end)
+
+
+def _refuse_long_lists(found: list[tuple[int, int, int]], limits: ReadLimits) -> None:
+    """Refuse a tag that would be turned into millions of numbers before anybody looks at it."""
+    for code, kind, count in found:
+        if code in _LOADED and kind not in _BYTES and count > limits.max_segments:
+            raise UnreadableImage(
+                f"its tag {code} lists {count} numbers, more than the limit of "
+                f"{limits.max_segments}"
+            )
 
 
 def _unpack(number: str, content: bytes, offset: int) -> int:

@@ -87,7 +87,7 @@ def _decode(
             tags = metadata.raw_tags(page, content, limits)
             exif = None
             with contextlib.suppress(UnreadableImage), untrusted():
-                exif = metadata.exif_date(page)  # a damaged date does not cost the image
+                exif = metadata.exif_date(page, content)  # a damaged date does not cost the image
     return layout, values, tags, exif
 
 

@@ -15,8 +15,16 @@ class ReadLimits:
     max_pixels: int = 100_000_000
     """Of the first page, and of its tiles with their padding."""
     max_pages: int = 10_000
+    max_tags: int = 4096
+    """Of one page."""
+    max_segments: int = 1_000_000
+    """Strips or tiles of the first page, and numbers that any other tag may list."""
     max_metadata_bytes: int = 1024**2
     """Of one metadata tag."""
+    max_table_bytes: int = 50 * 1024**2
+    """Of a weather log: one row a minute for two years."""
+    max_text_bytes: int = 1024**2
+    """Of a file of criteria or of a response curve."""
 
 
 DEFAULT_LIMITS: Final = ReadLimits()

@@ -10,7 +10,7 @@ import re
 import struct
 from dataclasses import dataclass
 from datetime import datetime
-from typing import Any, Final
+from typing import Final
 from xml.parsers import expat
 
 from tifffile import TiffPage
@@ -40,6 +40,9 @@ UNITS: Final = {
     **dict.fromkeys(("degc", "deg c", "°c", "℃", "c", "celsius"), "celsius"),
     **dict.fromkeys(("degree celsius", "degrees celsius", "degree_celsius"), "celsius"),
 }
+
+_MOST_EXIF_TAGS: Final = 1000
+_LONGEST_DATE: Final = 100
 
 CarriedTag = tuple[int, int, int, object]
 
@@ -85,12 +88,34 @@ def raw_tags(page: TiffPage, content: bytes, limits: ReadLimits) -> dict[int, Ra
     return found
 
 
-def exif_date(page: TiffPage) -> str | None:
-    """Return the original date in the page's Exif directory, as its text."""
+def exif_date(page: TiffPage, content: bytes) -> str | None:
+    """Return the original date in the page's Exif directory, as its text.
+
+    Only this one tag is looked at: a reader of the whole directory would take each of its tags
+    into memory, whatever they claim to hold.
+
+    Raises struct.error where the directory lies beyond the file.
+    """
     tag = page.tags.get(EXIF_DIRECTORY)
-    value: Any = None if tag is None else tag.value
-    found = value.get("DateTimeOriginal") if isinstance(value, dict) else None
-    return found if isinstance(found, str) else None
+    if tag is None:
+        return None
+    tiff = page.parent.tiff
+    start = tag.valueoffset
+    entries = struct.unpack_from(tiff.tagnoformat, content, start)[0]
+    for index in range(min(int(entries), _MOST_EXIF_TAGS)):
+        place = start + tiff.tagnosize + index * tiff.tagsize
+        code, kind, count, inline = struct.unpack_from(tiff.tagheaderformat, content, place)
+        if code != DATE_TIME_ORIGINAL or kind != ASCII or count > _LONGEST_DATE:
+            continue
+        if count <= tiff.tagoffsetthreshold:
+            return _plain(inline[:count])
+        offset = struct.unpack(tiff.offsetformat, inline)[0]
+        return _plain(content[offset : offset + count])
+    return None
+
+
+def _plain(content: bytes) -> str:
+    return content.split(b"\0")[0].decode("utf-8", "replace").strip()
 
 
 def read_date(tags: dict[int, RawTag], exif: str | None) -> tuple[datetime | None, list[str]]:
@@ -248,4 +273,4 @@ def _carried_value(
 
 
 def _text(tag: RawTag) -> str:
-    return tag.content.split(b"\0")[0].decode("utf-8", "replace").strip()
+    return _plain(tag.content)

@@ -43,6 +43,6 @@ def image_moment(path: Path, *, limits: ReadLimits = DEFAULT_LIMITS) -> datetime
             tags = metadata.raw_tags(page, content, limits)
             exif = None
             with contextlib.suppress(ImageError), untrusted():
-                exif = metadata.exif_date(page)
+                exif = metadata.exif_date(page, content)
             taken, _ = metadata.read_date(tags, exif)
     return taken

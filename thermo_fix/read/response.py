@@ -4,6 +4,9 @@ import csv
 from pathlib import Path
 
 from thermo_fix.errors import SheetError
+from thermo_fix.read.limits import DEFAULT_LIMITS
+from thermo_fix.read.wording import quoted
+from thermo_fix.text_file import read_text_file
 
 _MOST_POINTS = 20_000
 
@@ -27,12 +30,18 @@ def read_response(path: Path) -> tuple[tuple[float, float], ...]:
         A file that cannot be read, or a line that is no pair of numbers.
 
     """
+    text = read_text_file(
+        path, DEFAULT_LIMITS.max_text_bytes, "a response curve", "give fewer points"
+    )
+    written = text.splitlines()
+    if len(written) > _MOST_POINTS:
+        raise SheetError(f"{path.name}: more than {_MOST_POINTS} lines; give fewer points")
     try:
-        lines = list(csv.reader(path.read_text("utf-8-sig").splitlines()[: _MOST_POINTS + 1]))
-    except (OSError, UnicodeDecodeError, csv.Error) as error:
+        lines = list(csv.reader(written))
+    except csv.Error as error:
         raise SheetError(
-            f"{path.name}: the response curve cannot be read ({type(error).__name__}); "
-            "give a UTF-8 CSV file with wavelength and response in two columns"
+            f"{path.name}: the response curve is no CSV file ({error}); write wavelength and "
+            "response in two columns"
         ) from error
     points = []
     for number, line in enumerate(lines, 1):
@@ -44,7 +53,7 @@ def read_response(path: Path) -> tuple[tuple[float, float], ...]:
             if number == 1:
                 continue
             raise SheetError(
-                f"{path.name}, line {number}: {','.join(line)!r} is no pair of numbers; write "
+                f"{path.name}, line {number}: {quoted(','.join(line))} is no pair of numbers; write "
                 "wavelength in um and response, separated by a comma"
             ) from error
         points.append((wavelength, response))

@@ -9,12 +9,13 @@ from datetime import datetime, timedelta, timezone
 from pathlib import Path
 
 from thermo_fix.errors import SheetError
+from thermo_fix.read.limits import DEFAULT_LIMITS
 from thermo_fix.records import WeatherLog
+from thermo_fix.text_file import read_text_file
 
 COLUMNS = ("air_c", "humidity", "wind_m_s", "rain", "sun")
 """Columns that are read, besides ``time``."""
 
-_MOST_BYTES = 200_000_000
 _RANGES = {
     "air_c": (-90.0, 70.0, "degC"),
     "humidity": (0.0, 1.0, "a fraction, not percent"),
@@ -57,15 +58,9 @@ def read_weather(path: Path, utc_offset_hours: float | None) -> WeatherLog:
 
     """
     name = path.name
-    try:
-        if path.stat().st_size > _MOST_BYTES:
-            raise SheetError(f"{name}: the weather log is larger than 200 MB; cut it to the survey")
-        text = path.read_text("utf-8-sig")
-    except (OSError, UnicodeDecodeError) as error:
-        raise SheetError(
-            f"{name}: the weather log cannot be read ({type(error).__name__}); give a UTF-8 CSV "
-            "file in the survey folder"
-        ) from error
+    text = read_text_file(
+        path, DEFAULT_LIMITS.max_table_bytes, "a weather log", "cut it to the time of the survey"
+    )
     heading_line = next((line for line in text.splitlines() if line.strip()), "")
     delimiter = next((mark for mark in (";", "\t") if mark in heading_line), ",")
     lines = enumerate(csv.reader(io.StringIO(text, newline=""), delimiter=delimiter), 1)
@@ -145,7 +140,10 @@ def _local(moment: datetime, utc_offset_hours: float | None, name: str) -> datet
             "utc_offset_hours of the images' clock to [survey], such as utc_offset_hours = 1"
         )
     zone = timezone(timedelta(hours=utc_offset_hours))
-    return moment.astimezone(zone).replace(tzinfo=None)
+    try:
+        return moment.astimezone(zone).replace(tzinfo=None)
+    except OverflowError as error:  # at the ends of the calendar
+        raise SheetError(f"{name}: a time of the year {moment.year} is no time of a log") from error
 
 
 def _cell(written: str, column: str, where: str) -> float:

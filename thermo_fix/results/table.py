@@ -2,6 +2,7 @@
 
 import csv
 import math
+import re
 import unicodedata
 from pathlib import Path
 
@@ -36,17 +37,18 @@ COLUMNS = (
     "cautions",
 )
 _FORMULA_STARTS = ("=", "+", "-", "@")
+_SEPARATORS = re.compile("([;\t\r\n]+)")
 
 
 def write_table(path: Path, result: SurveyResult) -> None:
     """Write the findings as UTF-8 CSV (RFC 4180), worst first.
 
-    A text that a spreadsheet would take for a formula is preceded by an apostrophe. Every cell
-    stands in quotation marks: a spreadsheet that separates at semicolons or tabs splits none.
+    A text that a spreadsheet would take for a formula is preceded by an apostrophe; so is a part
+    of it that would stand in a cell of its own where semicolons, tabs or line ends separate.
     """
     # A file name that is no text keeps its odd bytes as escapes.
     with path.open("w", encoding="utf-8", errors="backslashreplace", newline="") as stream:
-        writer = csv.writer(stream, quoting=csv.QUOTE_ALL)
+        writer = csv.writer(stream)
         writer.writerow(COLUMNS)
         for finding in result.findings:
             writer.writerow(_row(finding))
@@ -85,7 +87,8 @@ def _number(value: float | None, digits: int) -> str:
 
 
 def _text(text: str) -> str:
-    return f"'{text}" if _is_like_formula(text) else text
+    pieces = _SEPARATORS.split(text)
+    return "".join(f"'{piece}" if _is_like_formula(piece) else piece for piece in pieces)
 
 
 def _is_like_formula(text: str) -> bool:
@@ -94,8 +97,6 @@ def _is_like_formula(text: str) -> bool:
     Full-width and small forms count as the signs that they stand for.
     """
     for character in text:
-        if character in "\t\r\n":
-            return True
         if character.isprintable() and not character.isspace():
             return unicodedata.normalize("NFKC", character).startswith(_FORMULA_STARTS)
     return False

@@ -19,6 +19,7 @@ from thermo_fix.sheet.building import design_conditions, survey_conditions
 from thermo_fix.sheet.inherit import Stated, completed, merged, stated
 from thermo_fix.sheet.lines import KeyPath
 from thermo_fix.sheet.problems import Problems, nearest
+from thermo_fix.sheet.renamed import renewed
 from thermo_fix.sheet.schema import (
     SHEET_NAME,
     SHEET_VERSION,
@@ -152,7 +153,14 @@ class _SheetLoader:
     known_settings: KnownCriteria | None
 
     def __post_init__(self) -> None:
-        self.problems = Problems(self.text, self.raw)
+        renewal = renewed(self.raw)
+        self.problems = Problems(self.text, self.raw, renewal.old_keys)
+        self.raw = renewal.sheet
+        self._renamed_notes = renewal.notes
+        for path, new in renewal.doubled:
+            self.problems.add_about_table(
+                path, f'"{path[-1]}" is the old name of "{new}", which is stated too; remove it'
+            )
         self._resolved_folder = self.folder.resolve()
         self._planes: set[str] = set()
         """Files that hold an input of other images, not an image of the survey."""
@@ -457,7 +465,7 @@ class _SheetLoader:
         images: Sequence[ImageJob],
         unnamed: Sequence[str],
     ) -> tuple[str, ...]:
-        notes = []
+        notes = list(self._renamed_notes)
         if survey.purpose is None:
             notes.append("The purpose was not told: a building survey is assumed.")
         if not self.raw.get("image"):

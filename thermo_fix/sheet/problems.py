@@ -35,6 +35,8 @@ class Problems:
     """The sheet as read."""
     raw: Mapping[str, object]
     """The sheet as parsed, before any check."""
+    old_keys: Mapping[KeyPath, str] = field(default_factory=dict)
+    """By path with the new name of a key that was renamed: the old one, which stands there."""
     found: list[_Problem] = field(default_factory=list)
 
     def add(self, path: KeyPath, words: str, see: KeyPath | None = None) -> None:
@@ -100,14 +102,17 @@ class Problems:
     def _existing(self, path: KeyPath) -> tuple[KeyPath, object]:
         """Cut a path to what stands in the sheet: a bare number has no ``value`` inside."""
         value: object = self.raw
-        for length, step in enumerate(path):
+        written: KeyPath = ()
+        for length, named in enumerate(path, 1):
+            step = self.old_keys.get(path[:length], named)
             if isinstance(value, dict) and step in value:
                 value = value[step]
             elif isinstance(value, list) and isinstance(step, int) and step < len(value):
                 value = list(value)[step]
             else:
-                return path[:length], value
-        return path, value
+                return written, value
+            written = (*written, step)
+        return written, value
 
 
 def nearest(word: str, known: tuple[str, ...] | list[str]) -> str:

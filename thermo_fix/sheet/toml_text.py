@@ -1,11 +1,11 @@
 """From the bytes of a survey sheet to a plain dictionary, with mistakes explained."""
 
 import re
-import stat
 import tomllib
 from pathlib import Path
 
 from thermo_fix.errors import SheetError
+from thermo_fix.text_file import read_text_file
 
 MAX_BYTES = 64 * 1024 * 1024
 """More than any survey needs (about 400,000 images); a larger file is something else."""
@@ -25,31 +25,9 @@ def read_text(path: Path) -> str:
     Raises ``SheetError`` when it cannot be read, is no ordinary file, is too large or is not
     UTF-8.
     """
-    name = path.name
-    try:
-        facts = path.stat()
-        if not stat.S_ISREG(facts.st_mode):
-            raise SheetError(f"{name}: this is no ordinary file; a survey sheet is a text file")
-        if facts.st_size > MAX_BYTES:
-            raise SheetError(
-                f"{name}: {facts.st_size / 1e6:.0f} MB is too large for a survey sheet (at most "
-                f"{MAX_BYTES / 1e6:.0f} MB); split the survey into several folders"
-            )
-        data = path.read_bytes()
-    except OSError as error:
-        raise SheetError(
-            f"{name}: cannot be read ({error.strerror or error}); check its permissions"
-        ) from error
-    if data.startswith((b"\xff\xfe", b"\xfe\xff")):
-        raise SheetError(f"{name}: the text is UTF-16; save it as UTF-8")
-    try:
-        return data.decode("utf-8-sig")
-    except UnicodeDecodeError as error:
-        line = data.count(b"\n", 0, error.start) + 1
-        raise SheetError(
-            f"{name}, line {line}: the byte 0x{data[error.start]:02X} is not UTF-8 text; "
-            "save the file as UTF-8"
-        ) from error
+    return read_text_file(
+        path, MAX_BYTES, "a survey sheet", "split the survey into several folders"
+    )
 
 
 def parse(text: str, name: str) -> dict[str, object]:

@@ -6,7 +6,6 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy import stats
 
 from thermo_fix.errors import DomainError
 from thermo_fix.uncertainty.variables import DRAWS, SEED, Variable
@@ -93,10 +92,13 @@ def coverage_factor(probability: float, freedom: float = math.inf) -> float:
     """
     if not 0.0 < probability < 1.0:
         raise DomainError(f"a coverage probability lies between 0 and 1, not {probability:g}")
+    # Imported here: loading it takes longer than all else that a single reading needs.
+    from scipy.special import ndtri, stdtrit
+
     tail = (1.0 + probability) / 2.0
     if math.isinf(freedom):
-        return float(stats.norm.ppf(tail))
-    return float(stats.t.ppf(tail, freedom))
+        return float(ndtri(tail))
+    return float(stdtrit(freedom, tail))
 
 
 @dataclass(frozen=True, slots=True)

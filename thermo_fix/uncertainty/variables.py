@@ -13,7 +13,6 @@ from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import ndtr, ndtri
 
 from thermo_fix.errors import DomainError
 
@@ -82,6 +81,9 @@ class Variable:
 @lru_cache(maxsize=256)
 def _draw(variable: Variable, count: int, seed: int) -> NDArray[np.float64]:
     # Kept, because every finding of a zone and every scenario of a finding draws the same again.
+    # Imported here: loading it takes longer than all else that a single reading needs.
+    from scipy.special import ndtr, ndtri
+
     if variable.u == 0.0:
         draws = np.full(count, variable.value)
     elif variable.shape == "rectangular":

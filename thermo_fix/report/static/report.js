@@ -598,11 +598,13 @@
       }
       const axisX = draw(axes, "svg", { class: "axis-x", width: "100%", height: 20 });
       const [whole, unit] = this.lengthOf(length);
-      for (const tick of ticks(0, whole)) {
+      const xTicks = ticks(0, whole);
+      xTicks.forEach((tick, number) => {
+        const text = number === xTicks.length - 1 ? `${tick.text}\u00a0${unit}` : tick.text;
         draw(axisX, "text", {
-          x: `${tick.percent}%`, y: 14, "text-anchor": tick.percent > 96 ? "end" : "middle",
-        }, tick.text);
-      }
+          x: `${tick.percent}%`, y: 14, "text-anchor": tick.percent > 92 ? "end" : "middle",
+        }, text);
+      });
       figure.append(axes);
       const numbers = known.map((point) => point.value);
       const caption = document.createElement("figcaption");
