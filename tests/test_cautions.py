@@ -61,7 +61,9 @@ def peak(height_k: float = 6.0) -> Image:
     """A spot with a round top at (x, y) = (36, 25)."""
     rows, columns = np.mgrid[: SHAPE[0], : SHAPE[1]]
     distance = (rows - 25.0) ** 2 + (columns - 36.0) ** 2
-    return picture(20.0, 0.0) + (height_k * np.exp(-distance / 32.0)).astype(np.float32)
+    image = picture(20.0, 0.0)
+    image += height_k * np.exp(-distance / 32.0)
+    return image
 
 
 def with_defect(image: Image) -> Image:

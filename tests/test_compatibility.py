@@ -3,6 +3,7 @@
 import importlib.metadata
 import json
 import re
+import subprocess
 import sys
 import tomllib
 from pathlib import Path
@@ -152,6 +153,16 @@ def test_the_promise_names_every_table_and_public_name() -> None:
         assert f"`[{table}]`" in DOCS
     for name in public_names:
         assert f"`{name}`" in DOCS
+
+
+@pytest.mark.parametrize("first", ["thermo_fix.correct.frame", "thermo_fix.survey"])
+def test_the_function_is_not_hidden_by_the_stage_of_its_name(first: str) -> None:
+    # In a process of its own, because the order of the imports is what matters.
+    code = f"import {first}, thermo_fix; print(thermo_fix.correct(20.0, emissivity=1.0).u_k > 0)"
+    done = subprocess.run(
+        [sys.executable, "-c", code], cwd=ROOT, capture_output=True, text=True, check=False
+    )
+    assert (done.stdout, done.stderr) == ("True\n", "")
 
 
 def test_the_promise_names_the_pythons_of_the_project() -> None:

@@ -32,6 +32,7 @@ from thermo_fix.report import CriterionText, Pictures, encode_pictures, write_re
 from thermo_fix.report.catalogue import Words, load_words
 from thermo_fix.report.drawing import crop, marks, outline, shares, ticks
 from thermo_fix.report.formatting import Units, fixed, iso, measured, percent, shortest
+from thermo_fix.report.plots import histogram, overview, scale_bar
 from thermo_fix.report.survey_view import MOST_CARDS, SurveyViews
 from thermo_fix.report.view import FindingView, ReportView
 
@@ -939,3 +940,49 @@ def test_colours_of_text_have_contrast(scheme: str) -> None:
     for mark in ("bar", "strong-rule", "warn-rule"):
         # WCAG 2.2, success criterion 1.4.11 (AA).
         assert contrast(tokens[mark], tokens["sheet"]) >= 3.0, (scheme, mark)
+
+
+# ---------------------------------------------------------------- plots
+
+
+def test_scale_bar_is_a_round_length_that_fits() -> None:
+    # Arithmetic: 320 pixels of 1.56 mm are 499 mm; 30 % of that are 150 mm.
+    bar = scale_bar(0.00156, 320, Units())
+    assert bar is not None
+    assert bar.text == "10\u00a0cm"
+    assert bar.percent == pytest.approx(100.0 * 100.0 / 499.2)
+    assert scale_bar(None, 320, Units()) is None
+    wide = scale_bar(0.02, 640, Units())  # 12.8 m across
+    assert wide is not None
+    assert wide.text == "2\u00a0m"
+
+
+def test_histogram_marks_extremes_and_references() -> None:
+    result, _ = fake.electrical()
+    findings = list(enumerate(result.images[0].findings, 1))
+    drawn = histogram([0, 4, 16, 0], 20.0, 80.0, findings, load_words())
+    assert drawn is not None
+    # Square roots: 4 of 16 stand half as high, 100 being the foot.
+    assert drawn.path == "M0 100L0 100h1L1 50h1L2 0h1L3 100h1L4 100Z"
+    places = {(round(marker.percent, 1), marker.reference) for marker in drawn.markers}
+    # Arithmetic: (72.36 - 20) / 60, (36.81 - 20) / 60; both references are at 31.17.
+    assert (87.3, False) in places
+    assert (28.0, False) in places
+    assert (18.6, True) in places
+    assert "ref. 1, 2" in {marker.text for marker in drawn.markers}
+    assert histogram([0, 0], 20.0, 80.0, findings, load_words()) is None
+
+
+def test_overview_holds_every_finding_with_a_difference() -> None:
+    result, _ = fake.building()
+    plot = overview(result.findings, Units())
+    assert plot is not None
+    assert [dot.number for dot in plot.dots] == [1, 2, 3, 4, 5]
+    assert plot.left_out == 0
+    assert all(0.0 < dot.x < 100.0 and 0.0 < dot.y < 100.0 for dot in plot.dots)
+    by_number = {dot.number: dot for dot in plot.dots}
+    ordered = sorted(result.findings, key=lambda finding: abs(finding.delta_k or 0.0))
+    numbers = [result.findings.index(finding) + 1 for finding in ordered]
+    across = [by_number[number].x for number in numbers]
+    assert across == sorted(across)
+    assert overview(fake.bare()[0].findings, Units()) is None

@@ -266,22 +266,8 @@ def only_finding(result: SurveyResult, **changes: Any) -> SurveyResult:
     return replace(result, images=(replace(image, findings=(changed,)),))
 
 
-STARTS = [
-    "=",
-    "+",
-    "-",
-    "@",
-    "\t",
-    "\r",
-    "\n",
-    " =",
-    "\xa0=",
-    "\u200b=",
-    "\ufeff=",
-    "\x00=",
-    "\x1b@",
-]
-STARTS += ["＝", "＋", "－", "＠", "﹢", "\u3000＝", " \n"]
+STARTS = ["=", "+", "-", "@", "\t", "\r", "\n", " =", "\xa0=", "\u200b=", "\ufeff=", "\x00="]
+STARTS += ["\x1b@", "＝", "＋", "－", "＠", "﹢", "\u3000＝"]
 
 
 @pytest.mark.parametrize("start", STARTS)
@@ -293,15 +279,21 @@ def test_no_text_becomes_a_formula(result: SurveyResult, tmp_path: Path, start: 
         assert row[column] == f"'{text}"
 
 
-@pytest.mark.parametrize("mark", [";", "\t", ","])
-def test_no_text_splits_a_row_of_a_spreadsheet(
-    result: SurveyResult, tmp_path: Path, mark: str
+@pytest.mark.parametrize("mark", [";", "\t", ",", "\n", "\r\n", "; ", '"\n\t '])
+@pytest.mark.parametrize("start", ["", "a", 'a"'])
+def test_no_text_gets_a_cell_of_its_own(
+    result: SurveyResult, tmp_path: Path, mark: str, start: str
 ) -> None:
-    write_table(tmp_path / "findings.csv", only_finding(result, zone=f'a"{mark}=HYPERLINK(1)'))
-    lines = (tmp_path / "findings.csv").read_text("utf-8").splitlines()
-    # A spreadsheet that separates at this mark.
-    cells = list(csv.reader(lines, delimiter=mark))[1]
-    assert not any(cell.startswith("=") for cell in cells)
+    zone = f"{start}{mark}=HYPERLINK(1)"
+    write_table(tmp_path / "findings.csv", only_finding(result, zone=zone))
+    text = (tmp_path / "findings.csv").read_text("utf-8")
+    # Whatever a spreadsheet takes for the separator, and however it treats quotation marks.
+    for delimiter in ",;\t":
+        for quoting in (csv.QUOTE_MINIMAL, csv.QUOTE_NONE):
+            if delimiter == "," and quoting == csv.QUOTE_NONE:
+                continue  # nobody reads CSV like that
+            for row in csv.reader(text.splitlines(), delimiter=delimiter, quoting=quoting):
+                assert not any(cell.strip(' "').startswith("=") for cell in row)
 
 
 @pytest.mark.parametrize("text", ["lug B", "2 = 1", "a-b", "Ü", "端子", "", "'=1", "#1", "%"])

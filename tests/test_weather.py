@@ -145,7 +145,7 @@ def test_a_wrong_log_is_refused_in_one_line(tmp_path: Path, text: str, words: li
 def test_a_file_that_is_no_text_is_refused(tmp_path: Path) -> None:
     path = tmp_path / "weather.csv"
     path.write_bytes(b"\xff\xfe\x00")
-    with pytest.raises(SheetError, match=r"weather\.csv: .*cannot be read"):
+    with pytest.raises(SheetError, match=r"weather\.csv: the text is UTF-16; save it as UTF-8"):
         read_weather(path, None)
 
 

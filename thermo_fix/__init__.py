@@ -7,6 +7,8 @@ joins the stages; ``cli`` is the command line.
 Public names: :func:`correct` for numbers and arrays, :func:`run_survey` for a folder.
 """
 
+import sys
+from types import ModuleType
 from typing import TYPE_CHECKING, Any
 
 from thermo_fix.version import __version__
@@ -22,6 +24,20 @@ _HOMES = {
     "Corrected": "thermo_fix.point",
     "run_survey": "thermo_fix.survey",
 }
+
+
+class _Package(ModuleType):
+    """The package, whose function ``correct`` the stage of that name does not hide.
+
+    Python sets a folder of a package as its attribute when that is imported.
+    """
+
+    def __setattr__(self, name: str, value: object) -> None:
+        if not (name in _HOMES and isinstance(value, ModuleType)):
+            super().__setattr__(name, value)
+
+
+sys.modules[__name__].__class__ = _Package
 
 
 def __getattr__(name: str) -> Any:

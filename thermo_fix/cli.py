@@ -167,6 +167,7 @@ def vet(folder: Folder) -> None:
     from thermo_fix.read import read_frame
     from thermo_fix.sheet import check_polygon
     from thermo_fix.survey import open_survey
+    from thermo_fix.work import check_place
 
     survey = open_survey(folder)
     for note in survey.notes:
@@ -174,6 +175,7 @@ def vet(folder: Folder) -> None:
     bad = 0
     for job in survey.images:
         try:
+            check_place(job, survey)
             frame = read_frame(job.path, survey.camera)
             rows, columns = frame.shape
             messages = [check_polygon(zone, columns, rows) for zone in job.zones]

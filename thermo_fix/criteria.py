@@ -54,6 +54,8 @@ LIMIT_CRITERION = "absolute-limit"
 _MOST_BYTES = 1024**2
 """Of a survey's own file of criteria."""
 
+_LONGEST_QUOTE = 80
+
 _CRITERION_KEYS = {
     "id",
     "title",
@@ -258,7 +260,7 @@ def _criterion(table: Any, file: str, number: int) -> Criterion:
     quantity = table.get("quantity")
     if quantity not in get_args(QuantityName):
         raise SheetError(
-            f"{where}: quantity = {quantity!r} is not one of {', '.join(get_args(QuantityName))}"
+            f"{where}: quantity = {_quoted(quantity)} is not one of {', '.join(get_args(QuantityName))}"
         )
     senses = table.get("senses")
     if (
@@ -269,7 +271,7 @@ def _criterion(table: Any, file: str, number: int) -> Criterion:
         raise SheetError(f'{where}: senses must be a list of "hot" and "cold"')
     side = table.get("side")
     if side not in (None, "inside"):
-        raise SheetError(f'{where}: side = {side!r}; leave it out or write "inside"')
+        raise SheetError(f'{where}: side = {_quoted(side)}; leave it out or write "inside"')
     given = table.get("settings", {})
     if not isinstance(given, dict):
         raise SheetError(f"{where}: settings must be a table")
@@ -297,8 +299,14 @@ def _setting(table: Any, where: str) -> Setting:
     _no_unknown(table, _SETTING_KEYS, where)
     default = table.get("default")
     if default is not None and not _is_number(default):
-        raise SheetError(f"{where}: default = {default!r} must be a number")
+        raise SheetError(f"{where}: default = {_quoted(default)} must be a number")
     return Setting(_text(table, "meaning", where), default if default is None else float(default))
+
+
+def _quoted(value: Any) -> str:
+    """Write a value of the file, cut to what a message can hold."""
+    text = repr(value) if not isinstance(value, int) or abs(value) < 10**20 else "a huge number"
+    return text if len(text) <= _LONGEST_QUOTE else f"{text[:_LONGEST_QUOTE]}..."
 
 
 def _is_number(value: Any) -> bool:
@@ -319,17 +327,19 @@ def _grade_class(table: Any, settings: Mapping[str, Setting], where: str) -> Gra
         if threshold not in settings:
             raise SheetError(f'{where}: class refers to the setting "{threshold}", not defined')
     elif not _is_number(threshold):
-        raise SheetError(f"{where}: {conditions[0]} = {threshold!r} must be a number or a setting")
+        raise SheetError(
+            f"{where}: {conditions[0]} = {_quoted(threshold)} must be a number or a setting"
+        )
     else:
         threshold = float(threshold)
     plus = table.get("plus", "")
     if not isinstance(plus, str):
-        raise SheetError(f"{where}: plus = {plus!r} must be the name of a setting")
+        raise SheetError(f"{where}: plus = {_quoted(plus)} must be the name of a setting")
     if plus and plus.removeprefix("-") not in settings:
         raise SheetError(f'{where}: plus refers to the setting "{plus}", not defined')
     grade = table.get("grade")
     if grade not in GRADES:
-        raise SheetError(f"{where}: grade = {grade!r} is not one of {', '.join(GRADES)}")
+        raise SheetError(f"{where}: grade = {_quoted(grade)} is not one of {', '.join(GRADES)}")
     return GradeClass(
         comparison=conditions[0],
         threshold=threshold,

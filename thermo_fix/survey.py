@@ -63,7 +63,7 @@ RESULTS_NAME = "results"
 _WHAT = {"building": "building", "electrical": "electrical installation"}
 _LONGEST_NAME = 255
 """Bytes that usual file systems take for a name."""
-_WORTH_A_POOL = 8
+_WORTH_A_POOL = 24
 """Images from which starting worker processes pays."""
 
 Progress = Callable[[int, int, str], None]

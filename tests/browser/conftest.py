@@ -7,15 +7,17 @@ variable THERMO_FIX_REQUIRE_BROWSER=1 that is a failure.
 import os
 import shutil
 from collections.abc import Iterator
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pytest
 
 from tests import make_fake_result as fake
 from thermo_fix.demo import demo_surveys
-from thermo_fix.report import write_report
+from thermo_fix.records import PixelBudget, SurveyResult
+from thermo_fix.report import Pictures, encode_pictures, write_report
 from thermo_fix.survey import run_survey
 
 BROWSERS = ("chromium", "chromium-browser", "google-chrome")
@@ -115,6 +117,24 @@ def demos(tmp_path_factory: pytest.TempPathFactory) -> dict[str, Path]:
     return found
 
 
+def by_pixel() -> tuple[SurveyResult, dict[str, Pictures]]:
+    """A survey whose emissivity is a plane and whose camera had not recorded emissivity 1."""
+    result, planes = fake.electrical()
+    image = result.images[0]
+    plane = planes[image.file]
+    columns = np.broadcast_to(np.arange(plane.corrected_c.shape[1]), plane.corrected_c.shape)
+    changed = replace(
+        plane,
+        labels=None,
+        budgets=(PixelBudget("", None, np.empty(0), {}, ()),),
+        emissivity=(0.5 + columns / 1000.0).astype(np.float32),
+        apparent_c=plane.recorded_c - np.float32(0.7),
+    )
+    bare = replace(image, zones=())
+    only = replace(result, images=(bare,))
+    return only, {image.file: encode_pictures(changed, bare)}
+
+
 @pytest.fixture(scope="session")
 def fakes(tmp_path_factory: pytest.TempPathFactory) -> dict[str, Path]:
     """Pages of invented surveys, of every kind: one file, many files, nothing found, ..."""
@@ -130,6 +150,9 @@ def fakes(tmp_path_factory: pytest.TempPathFactory) -> dict[str, Path]:
         sheet_text=fake.SHEET,
         run_time=fake.RUN_TIME,
         images_per_page=1,
+    )
+    write_report(
+        *by_pixel(), folder / "by pixel.html", sheet_text=fake.SHEET, run_time=fake.RUN_TIME
     )
     pages = {path.stem: path for path in folder.glob("*.html")}
     pages["entry"] = large / "report.html"

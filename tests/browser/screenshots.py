@@ -1,6 +1,7 @@
 """Pictures of both demo reports for the documentation: ``python tests/browser/screenshots.py``.
 
-Written to docs/screenshots/, in fewer colours where a file would be large. They need Chromium and Playwright, as the tests do.
+Written to docs/screenshots/, in fewer colours where a file would be large. They need Chromium
+and Playwright, as the tests do.
 """
 
 import io

@@ -36,8 +36,10 @@ def violations(page: Any) -> list[str]:
     return [str(line) for line in found]
 
 
-@pytest.mark.parametrize("dark", [False, True], ids=["light", "dark"])
-@pytest.mark.parametrize("kind", KINDS)
+@pytest.mark.parametrize(
+    ("kind", "dark"),
+    [*((kind, False) for kind in KINDS), *((kind, True) for kind in ("electrical", "entry"))],
+)
 def test_axe_finds_nothing(kind: str, dark: bool, fakes: Any, visit: Any) -> None:
     seen = visit(fakes[kind], dark=dark)
     seen.page.evaluate(
@@ -109,7 +111,7 @@ def test_nothing_runs_off_the_side(kind: str, width: int, fakes: Any, visit: Any
             page.keyboard.press(key)
         page.locator(".profile figcaption").first.wait_for()
         clipped = page.evaluate(
-            "() => [...document.querySelectorAll('.main > *, .side > *, .tools, .tools > *, .axes')]"
+            "() => [...document.querySelectorAll('.main > *, .side > *, .tools > *, .profile > *')]"
             ".map(e => e.getBoundingClientRect().right - "
             "e.closest('.main, .side').getBoundingClientRect().right).filter(over => over > 1)"
         )

@@ -34,8 +34,7 @@ def drawn_pictures(page: Any) -> list[tuple[float, float, float, float]]:
     return found
 
 
-@pytest.mark.parametrize("paper", ["A4", "letter"])
-@pytest.mark.parametrize("survey", ["electrical", "building"])
+@pytest.mark.parametrize(("survey", "paper"), [("electrical", "A4"), ("building", "letter")])
 def test_the_printed_report(
     survey: str, paper: Any, demos: Any, browser: Any, tmp_path: Path
 ) -> None:

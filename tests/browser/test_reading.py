@@ -11,6 +11,7 @@ import numpy as np
 import pytest
 import tifffile
 
+from tests import make_fake_result as fake
 from thermo_fix.correct import correct_frame, radiation_models
 from thermo_fix.demo import demo_surveys
 from thermo_fix.read import read_frame, reading_k
@@ -317,3 +318,38 @@ def test_swapping_shows_the_recorded_picture_on_the_same_scale(demos: Any, visit
     assert pressed == "true"
     page.locator('[data-bench="p1"] [data-do="corrected"]').click()
     assert page.locator(".swapped").count() == 0
+
+
+def test_planes_by_pixel_are_read_and_a_difference_is_only_bounded(fakes: Any, visit: Any) -> None:
+    result, planes = fake.electrical()
+    plane = planes[result.images[0].file]
+    seen = visit(fakes["by pixel"])
+    page = seen.page
+    places = ((40, 50), (162, 100))
+    for x, y in places:
+        point_at(page, 1, x, y)
+        text = page.locator('[data-bench="p1"] [data-show="readout"]').inner_text()
+        found = re.search(
+            r": (\S+)\s°C ±\s(\S+)\sK\. Apparent temperature (\S+)\s°C; reading (\S+)\s°C; "
+            r"emissivity used (\S+)\.$",
+            text,
+        )
+        assert found is not None, text
+        shown = [number(part) for part in found.groups()]
+        reading = float(plane.recorded_c[y, x])
+        wanted = [float(plane.corrected_c[y, x]), reading - 0.7, reading]
+        assert [shown[0], *shown[2:4]] == pytest.approx(wanted, abs=0.0101)
+        assert shown[1] == pytest.approx(2.0 * float(plane.uncertainty_k[y, x]), rel=0.06)
+        # As made up: 0.5 and a thousandth for each column.
+        assert shown[4] == pytest.approx(0.5 + x / 1000.0, abs=0.0006)
+        page.mouse.down()
+        page.mouse.up()
+    row = page.locator('[data-bench="p1"] .points tbody tr').nth(1)
+    row.wait_for()
+    text = row.locator("td").nth(4).inner_text().replace("\u00a0", " ")
+    bound = re.search(r"at most (\S+) K$", text)
+    assert bound is not None, text
+    # No correlation makes the uncertainty of a difference more than the sum of both.
+    total = 2.0 * sum(float(plane.uncertainty_k[y, x]) for x, y in places)
+    assert number(bound[1]) == pytest.approx(total, rel=0.06)
+    assert seen.complaints == []

@@ -77,10 +77,12 @@ def _changes(node: ast.AST) -> Iterator[ast.expr]:
         yield fresh_bool
     elif isinstance(node, ast.UnaryOp) and isinstance(node.op, ast.USub | ast.Not | ast.Invert):
         yield copy.deepcopy(node.operand)
-    elif isinstance(node, ast.Constant) and type(node.value) in (int, float):
+    elif isinstance(node, ast.Constant) and not isinstance(node.value, bool):
         # A number that is wrong by a twentieth, or by one where it counts.
-        value = node.value
-        yield ast.Constant(value + 1 if isinstance(value, int) else value * 1.05 or 0.05)
+        if isinstance(node.value, int):
+            yield ast.Constant(node.value + 1)
+        elif isinstance(node.value, float):
+            yield ast.Constant(node.value * 1.05 or 0.05)
 
 
 def _with(tree: ast.Module, old: ast.AST, new: ast.AST) -> ast.Module:

@@ -9,6 +9,10 @@ from thermo_fix.read.wording import quoted
 from thermo_fix.text_file import read_text_file
 
 _MOST_POINTS = 20_000
+_WAVELENGTHS_UM = (0.7, 30.0)
+"""As for the band of the camera in the sheet."""
+_LARGEST = 1e9
+"""A relative response in whatever numbers an instrument counts."""
 
 
 def read_response(path: Path) -> tuple[tuple[float, float], ...]:
@@ -53,8 +57,14 @@ def read_response(path: Path) -> tuple[tuple[float, float], ...]:
             if number == 1:
                 continue
             raise SheetError(
-                f"{path.name}, line {number}: {quoted(','.join(line))} is no pair of numbers; write "
-                "wavelength in um and response, separated by a comma"
+                f"{path.name}, line {number}: {quoted(','.join(line))} is no pair of numbers; "
+                "write wavelength in um and response, separated by a comma"
             ) from error
+        low, high = _WAVELENGTHS_UM
+        if not (low <= wavelength <= high and abs(response) <= _LARGEST):
+            raise SheetError(
+                f"{path.name}, line {number}: {quoted(','.join(line))}: a wavelength lies between "
+                f"{low:g} and {high:g} um, and a response is at most {_LARGEST:g}"
+            )
         points.append((wavelength, response))
     return tuple(points)

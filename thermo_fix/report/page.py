@@ -33,7 +33,7 @@ from thermo_fix.version import __version__
 IMAGES_PER_PAGE: Final = 60
 """Images up to which a report is one file."""
 
-ENTRY_ROWS: Final = 200
+ENTRY_ROWS: Final = 100
 """Findings in the table of the entry page of a large survey; the lists hold them all."""
 
 _PACKAGES: Final = (

@@ -9,8 +9,11 @@ The only module of the report that uses OpenCV and matplotlib's colour maps.
 
 import json
 import math
+import os
 import struct
 import zlib
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from functools import lru_cache
 from typing import Final
@@ -240,7 +243,8 @@ def encode_photo(content: bytes, *, longest_px: int = 1200) -> bytes | None:
     if raw.size == 0:
         return None
     try:
-        photo = cv2.imdecode(raw, cv2.IMREAD_COLOR)
+        with _hushed():
+            photo = cv2.imdecode(raw, cv2.IMREAD_COLOR)
     except cv2.error:  # a size beyond the library's limits
         return None
     if photo is None:
@@ -250,6 +254,27 @@ def encode_photo(content: bytes, *, longest_px: int = 1200) -> bytes | None:
         photo = cv2.resize(photo, None, fx=reduction, fy=reduction, interpolation=cv2.INTER_AREA)
     done, jpeg = cv2.imencode(".jpg", photo, [int(cv2.IMWRITE_JPEG_QUALITY), 82])
     return jpeg.tobytes() if done else None
+
+
+@contextmanager
+def _hushed() -> Iterator[None]:
+    """Keep libraries in C from printing what a damaged picture makes them say.
+
+    They write past Python to the standard error of the process, so that is where to stop them.
+    """
+    try:
+        usual = os.dup(2)
+    except OSError:  # it is closed already
+        yield
+        return
+    try:
+        nowhere = os.open(os.devnull, os.O_WRONLY)
+        os.dup2(nowhere, 2)
+        os.close(nowhere)
+        yield
+    finally:
+        os.dup2(usual, 2)
+        os.close(usual)
 
 
 def colour_stops(colour_map: str, number: int = 17) -> tuple[str, ...]:

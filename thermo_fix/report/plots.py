@@ -26,7 +26,7 @@ _BAR_SHARE: Final = 0.3
 _NUMBERED: Final = 60
 """Findings that the overview numbers, worst first."""
 
-_DRAWN: Final = 2000
+_DRAWN: Final = 600
 """Findings that the overview draws, worst first."""
 
 
@@ -79,6 +79,9 @@ class Overview:
     limit: tuple[float, float, float, float]
     """Line on which the uncertainty equals the difference: x1, y1, x2, y2."""
     left_out: int
+    """Findings without a known difference and uncertainty."""
+    cut: bool
+    """Whether only the worst of them are drawn."""
     grades: tuple[GradeKey, ...]
     """Those that occur."""
 
@@ -161,7 +164,8 @@ def overview(ranked: Sequence[Finding], units: Units) -> Overview | None:
         for number, finding in enumerate(ranked, 1)
         if known(finding.delta_k) and known(finding.u_delta_k)
     ]
-    pairs = [pair for pair in pairs if pair[2] > 0.0 and pair[3] > 0.0][:_DRAWN]
+    known_pairs = [pair for pair in pairs if pair[2] > 0.0 and pair[3] > 0.0]
+    pairs = known_pairs[:_DRAWN]
     if len(pairs) < 2:
         return None
     x_low, x_high = _ends([pair[2] for pair in pairs])
@@ -184,7 +188,8 @@ def overview(ranked: Sequence[Finding], units: Units) -> Overview | None:
         x_ticks=tuple(Tick(across(v), units.shortest(v, 3)) for v in _round(x_low, x_high)),
         y_ticks=tuple(Tick(up(v), units.shortest(v, 3)) for v in _round(y_low, y_high)),
         limit=(across(start), up(start), across(end), up(end)) if start < end else (0, 0, 0, 0),
-        left_out=len(ranked) - len(pairs),
+        left_out=len(ranked) - len(known_pairs),
+        cut=len(known_pairs) > len(pairs),
         grades=tuple(key for key in keys if any(dot.grade == key for dot in drawn)),
     )
 
@@ -192,11 +197,14 @@ def overview(ranked: Sequence[Finding], units: Units) -> Overview | None:
 def _ends(values: Sequence[float]) -> tuple[float, float]:
     """Ends of a logarithmic axis with room beside the outermost values."""
     low, high = min(values) / 1.3, max(values) * 1.3
-    return (low, high) if high / low >= 4.0 else (low / 1.6, high * 1.6)
+    return (low, high) if high / low >= 3.0 else (low / 1.3, high * 1.3)
 
 
 def _round(low: float, high: float) -> list[float]:
     """Round numbers on a logarithmic axis."""
     powers = range(math.floor(math.log10(low)), math.ceil(math.log10(high)) + 1)
-    steps = (1.0, 2.0, 5.0) if high / low < 300.0 else (1.0,)
+    span = high / low
+    steps = (
+        (1.0, 2.0, 3.0, 5.0, 7.0) if span < 10.0 else (1.0, 2.0, 5.0) if span < 300.0 else (1.0,)
+    )
     return [step * 10.0**p for p in powers for step in steps if low <= step * 10.0**p <= high]

@@ -88,7 +88,8 @@ def _number(value: float | None, digits: int) -> str:
 
 def _text(text: str) -> str:
     pieces = _SEPARATORS.split(text)
-    return "".join(f"'{piece}" if _is_like_formula(piece) else piece for piece in pieces)
+    safe = "".join(f"'{piece}" if _is_like_formula(piece) else piece for piece in pieces)
+    return f"'{safe}" if safe.startswith(("\t", "\r", "\n")) else safe
 
 
 def _is_like_formula(text: str) -> bool:

@@ -106,7 +106,9 @@ def uniform_draws(name: str, count: int, seed: int) -> NDArray[np.float64]:
 
     Read only, because they are shared.
     """
-    digest = hashlib.blake2b(name.encode(), digest_size=16, key=str(seed).encode()).digest()
+    # The name may be that of a file, whose bytes need be no text.
+    written = name.encode("utf-8", "surrogatepass")
+    digest = hashlib.blake2b(written, digest_size=16, key=str(seed).encode()).digest()
     generator = np.random.Generator(np.random.PCG64(int.from_bytes(digest, "big")))
     uniform = generator.random(count)
     # random() may return exactly 0, whose normal quantile is minus infinity.
