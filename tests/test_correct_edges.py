@@ -7,6 +7,7 @@ import json
 from pathlib import Path
 from typing import Any
 
+import cv2
 import numpy as np
 import pytest
 from numpy.typing import NDArray
@@ -18,7 +19,7 @@ from thermo_fix.correct import kernel
 from thermo_fix.correct.quality import range_ends_k
 from thermo_fix.correct.reference_zone import foil_reading, inner_part
 from thermo_fix.errors import ImageError
-from thermo_fix.radiometry.blackbody import TotalModel
+from thermo_fix.radiometry.blackbody import TotalModel, band_model
 from thermo_fix.radiometry.path import OpticalPath
 from thermo_fix.read import reading_k
 from thermo_fix.records import (
@@ -27,7 +28,6 @@ from thermo_fix.records import (
     Frame,
     ImageResult,
     RangeEnds,
-    Recorded,
 )
 from thermo_fix.results import read_plane
 from thermo_fix.survey import RunOptions
@@ -57,7 +57,7 @@ def run_one(folder: Path, more: str, image: NDArray[Any] | None = None) -> Image
     return result
 
 
-def zone(corners: list[list[float]], more: str = "") -> str:
+def zone(corners: list[list[int]], more: str = "") -> str:
     return f'[[image.zone]]\nname = "z"\npolygon = {corners}\n{more}'
 
 
@@ -103,12 +103,16 @@ def test_planes_of_a_zone_hold_in_the_zone_alone(tmp_path: Path) -> None:
     assert corrected[50, 60] == pytest.approx(surface_c(0.9), abs=0.005)
 
 
-def test_a_zone_between_the_pixels_takes_none(tmp_path: Path) -> None:
-    # Narrower than half a pixel: no centre of a pixel lies in it.
-    corners = [[10.6, 10], [10.9, 10], [10.9, 40], [10.6, 40]]
-    result = run_one(tmp_path, IMAGE + zone(corners, "emissivity = 0.5\n"))
+def test_a_zone_under_another_one_takes_no_pixel(tmp_path: Path) -> None:
+    corners = [[10, 10], [30, 10], [30, 40], [10, 40]]
+    first = zone(corners, "emissivity = 0.5\n")
+    second = zone(corners, "emissivity = 0.7\n").replace('"z"', '"y"')
+    result = run_one(tmp_path, IMAGE + first + second, np.full(SHAPE, 30.0, np.float32))
     assert result.status == "done"
-    assert any("z" in note for note in result.notes)
+    corrected = read_plane(tmp_path / "results" / "corrected" / "a.tif")
+    power = (303.15**4 - 0.3 * 293.15**4) / 0.7
+    assert corrected[20, 20] == pytest.approx(power**0.25 - 273.15, abs=0.005)
+    assert any("z" in note.split('"') or "zone z" in note for note in result.notes)
 
 
 # ---- many pixels -------------------------------------------------------------------------------
@@ -143,9 +147,9 @@ def test_without_the_library_that_looks_up_the_result_is_the_same(
 
 def test_an_older_library_is_noticed(monkeypatch: pytest.MonkeyPatch) -> None:
     def refuse(*_: object) -> None:
-        raise kernel.cv2.error("unsupported index")
+        raise cv2.error("unsupported index")
 
-    monkeypatch.setattr(kernel.cv2, "LUT", refuse)
+    monkeypatch.setattr(cv2, "LUT", refuse)
     assert kernel._cv2_looks_up_16_bit() is False
 
 
@@ -162,13 +166,11 @@ def test_a_zone_too_small_for_an_inset_is_taken_whole() -> None:
     assert np.count_nonzero(inner_part(larger)) == 25
 
 
-def test_a_foil_that_no_temperature_explains_is_refused() -> None:
-    # What the camera says it saw through a nearly opaque air of 20 degC, at 60 K below it.
-    camera = Camera(recorded=Recorded(transmittance=0.1))
-    readings = np.full((20, 20), 100.0, np.float32)
-    camera = Camera(recorded=Recorded(emissivity=1.0, transmittance=-0.9, air_c=20.0))
+def test_a_foil_beyond_the_tables_is_refused() -> None:
+    # The band model is tabulated to 1700 degC.
+    readings = np.full((20, 20), 2100.0, np.float32)
     with pytest.raises(ImageError, match="no apparent temperature under the recorded"):
-        foil_reading(readings * 5.0, np.ones((20, 20), bool), "foil", "a.tif", camera, TotalModel())
+        foil_reading(readings, np.ones((20, 20), bool), "foil", "a.tif", Camera(), band_model())
 
 
 # ---- ends of the range -------------------------------------------------------------------------

@@ -60,23 +60,38 @@ def background(
 
     """
     result = np.full(temperature.shape, np.nan, np.float32)
-    rows, columns = np.nonzero(inside)
-    if len(rows) == 0:
+    places = np.flatnonzero(inside)
+    if len(places) == 0:
         return result
-    values = temperature[rows, columns].astype(np.float64)
-    extent = int(max(np.ptp(rows), np.ptp(columns))) + 1
-    x = (columns - columns.mean()) / extent * 2.0
-    y = (rows - rows.mean()) / extent * 2.0
-    terms = _terms(x, y, len(rows))
-    step = max(1, len(rows) // _SAMPLE)
-    fitted: NDArray[np.float64] = terms @ _robust_fit(terms[::step], values[::step], sigma_k)
-    if len(rows) >= _LARGE_ZONE_PX:
+    box = _box(inside)
+    here, field = inside[box], temperature[box]
+    extent = max(here.shape)
+    # Centred and scaled to about -1 to 1, and temperatures near zero, so that float32 is enough
+    # where it is quick.
+    y = (np.arange(here.shape[0]) / extent * 2.0 - here.shape[0] / extent)[:, None]
+    x = (np.arange(here.shape[1]) / extent * 2.0 - here.shape[1] / extent)[None, :]
+    rows, columns = np.divmod(places[:: max(1, len(places) // _SAMPLE)], inside.shape[1])
+    level = float(np.median(temperature[rows, columns]))
+    values = temperature[rows, columns].astype(np.float64) - level
+    terms = _terms(x[0, columns - box[1].start], y[rows - box[0].start, 0], len(places))
+    fitted = _surface(_robust_fit(terms, values, sigma_k), x, y)
+    if len(places) >= _LARGE_ZONE_PX:
         for _ in range(2):
-            fitted += _broad_structure(
-                values - fitted, rows, columns, temperature.shape, extent, scale_k, sigma_k
-            )
-    result[rows, columns] = fitted
+            residual = np.where(here, field - np.float32(level) - fitted, np.float32(0.0))
+            fitted += _broad_structure(residual, here, extent, scale_k, sigma_k)
+    fitted += np.float32(level)
+    result[box] = np.where(here, fitted, np.float32(np.nan))
     return result
+
+
+def _box(inside: MaskArray) -> tuple[slice, slice]:
+    """Return the rows and columns that a zone spans."""
+    rows = np.flatnonzero(inside.any(axis=1))
+    columns = np.flatnonzero(inside.any(axis=0))
+    return (
+        slice(int(rows[0]), int(rows[-1]) + 1),
+        slice(int(columns[0]), int(columns[-1]) + 1),
+    )
 
 
 def _terms(x: NDArray[np.float64], y: NDArray[np.float64], count: int) -> NDArray[np.float64]:
@@ -86,6 +101,19 @@ def _terms(x: NDArray[np.float64], y: NDArray[np.float64], count: int) -> NDArra
     if count < _LARGE_ZONE_PX:
         return np.stack([one, x, y], axis=1)
     return np.stack([one, x, y, x * x, x * y, y * y], axis=1)
+
+
+def _surface(
+    coefficients: NDArray[np.float64], x: NDArray[np.float64], y: NDArray[np.float64]
+) -> NDArray[np.float32]:
+    """Evaluate the polynomial on a grid: a column vector, a row vector, and their product."""
+    c = [*coefficients, *np.zeros(6 - len(coefficients))]
+    along_y = (c[0] + y * (c[2] + y * c[5])).astype(np.float32)
+    along_x = (x * (c[1] + x * c[3])).astype(np.float32)
+    surface = along_y + along_x
+    if c[4] != 0.0:
+        surface += (c[4] * y).astype(np.float32) * x.astype(np.float32)
+    return np.asarray(surface, np.float32)
 
 
 def _robust_fit(
@@ -167,37 +195,34 @@ def _reweighted(
 
 
 def _broad_structure(
-    residual: NDArray[np.float64],
-    rows: NDArray[np.intp],
-    columns: NDArray[np.intp],
-    shape: tuple[int, ...],
+    residual: NDArray[np.float32],
+    inside: MaskArray,
     extent: int,
     scale_k: float,
     sigma_k: float,
-) -> NDArray[np.float64]:
-    """Normalised smoothing of the residual without the candidates, at the zone's pixels."""
-    field = np.zeros(shape, np.float32)
-    field[rows, columns] = residual
-    weight = np.zeros(shape, np.float32)
-    weight[rows, columns] = 1.0
+) -> NDArray[np.float32]:
+    """Normalised smoothing of the residual without the candidates.
+
+    Done on a grid as coarse as the smoothing length allows.
+    """
     limit = max(0.5 * scale_k, 3.0 * sigma_k)
-    candidate = (np.abs(cv2.blur(field, (3, 3))) > limit).astype(np.uint8)
-    weight[cv2.dilate(candidate, np.ones((7, 7), np.uint8)) > 0] = 0.0
+    candidate = cv2.dilate(
+        (np.abs(cv2.blur(residual, (3, 3))) > limit).astype(np.uint8), np.ones((7, 7), np.uint8)
+    )
+    weight = (inside & (candidate == 0)).astype(np.float32)
     length = max(2.0, _SMOOTHING_SHARE * extent)
-    weighted = _smoothed(field * weight, length)
-    total = _smoothed(weight, length)
+    step = max(1, int(length / _GRID_PER_LENGTH))
+    height, width = residual.shape
+    size = (max(1, width // step), max(1, height // step))
+
+    def smoothed(field: NDArray[np.float32]) -> NDArray[np.float32]:
+        coarse = field if step == 1 else cv2.resize(field, size, interpolation=cv2.INTER_AREA)
+        blurred = cv2.GaussianBlur(coarse, (0, 0), length / step, borderType=cv2.BORDER_CONSTANT)
+        return np.asarray(blurred, np.float32)
+
+    weighted, total = smoothed(residual * weight), smoothed(weight)
     # Where hardly any background is near, the polynomial alone has to do.
     smooth = weighted / np.maximum(total, 1e-6) * np.clip(total / 0.05, 0.0, 1.0)
-    return np.asarray(smooth[rows, columns], np.float64)
-
-
-def _smoothed(field: NDArray[np.float32], length: float) -> NDArray[np.float32]:
-    """Smooth over a length, on a coarser grid where that is fine enough for it."""
-    step = max(1, int(length / _GRID_PER_LENGTH))
-    height, width = field.shape
-    size = (max(1, width // step), max(1, height // step))
-    coarse = field if step == 1 else cv2.resize(field, size, interpolation=cv2.INTER_AREA)
-    smooth = cv2.GaussianBlur(coarse, (0, 0), length / step, borderType=cv2.BORDER_CONSTANT)
     if step > 1:
         smooth = cv2.resize(smooth, (width, height), interpolation=cv2.INTER_LINEAR)
     return np.asarray(smooth, np.float32)

@@ -110,7 +110,10 @@ def limits_of_zones(corrected: CorrectedFrame, found: set[str]) -> tuple[Assessm
             continue
         number = limit_number(limit, inputs)
         place = hottest_px(corrected, label)
-        if number is None or place is None:
+        if place is None:
+            lines.append(f"{zone.name} is not checked (it has no surface temperature).")
+            continue
+        if number is None:
             lines.append(
                 f"{zone.name} is not checked (its limit is a rise, and air_c is not told)."
             )
