@@ -56,9 +56,11 @@ class Cluster:
             client.wait_for_workers(count, timeout=60)
 
     def stop(self) -> None:
-        for process in (*self.workers, self.scheduler):
-            process.kill()
-            process.wait()
+        for worker in self.workers:
+            worker.kill()
+            worker.wait()
+        self.scheduler.kill()
+        self.scheduler.wait()
 
 
 @pytest.fixture
@@ -82,7 +84,7 @@ def test_cluster_gives_the_bytes_of_one_process(cluster: Cluster, tmp_path: Path
 def test_a_worker_that_dies_in_mid_run_costs_no_image(cluster: Cluster, tmp_path: Path) -> None:
     folder = tmp_path / "survey"
     write_survey(folder, "building", 3, images=16, shape=(120, 160))
-    killed = []
+    killed: list[str] = []
 
     def kill_one(done: int, total: int, file: str) -> None:
         if done == 3 and not killed:

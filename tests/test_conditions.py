@@ -83,9 +83,47 @@ def test_the_least_difference_of_all_images_counts(tmp_path: Path) -> None:
     assert (practice.state, practice.value) == ("not met", "8.0 K")
 
 
+def test_where_only_one_of_the_two_is_told_there_is_no_difference(tmp_path: Path) -> None:
+    for told in ("indoor_c", "outdoor_c"):
+        survey = survey_of(tmp_path, f"[scene]\n{told} = 20\n")
+        assert set(states(survey, "Indoor-outdoor difference")) == {"not told"}
+
+
+def loaded(load_a: float, rated_a: float, more: str = "") -> str:
+    corners = "[[0, 0], [9, 0], [9, 9], [0, 9]]"
+    return (
+        '[survey]\npurpose = "electrical"\n[[image]]\nfile = "a.tif"\n[[image.zone]]\n'
+        f'name = "z"\npolygon = {corners}\nload_a = {load_a}\nrated_a = {rated_a}\n{more}'
+    )
+
+
+@pytest.mark.parametrize(
+    ("load_a", "rated_a", "state", "value"),
+    [
+        # From 40 % on (NETA MTS 2019 practice; NFPA 70B:2023, 7.4, clause from memory).
+        (80.0, 200.0, "met", "least 40%"),
+        (79.0, 200.0, "not met", "least 40%"),
+        (20.0, 200.0, "not met", "least 10%"),
+    ],
+)
+def test_load(tmp_path: Path, load_a: float, rated_a: float, state: str, value: str) -> None:
+    (load_rule,) = found(survey_of(tmp_path, loaded(load_a, rated_a)), "Load")
+    assert (load_rule.state, load_rule.value) == (state, value)
+
+
+def test_the_load_of_a_zone_that_is_left_out_does_not_count(tmp_path: Path) -> None:
+    survey = survey_of(tmp_path, loaded(20.0, 200.0, "ignore = true\n"))
+    assert states(survey, "Load") == ["not told"]
+
+
 @pytest.mark.parametrize(
     ("hours", "expected"),
-    [(24, ["met", "met"]), (23.9, ["not met", "met"]), (2.9, ["not met", "not met"])],
+    [
+        (24, ["met", "met"]),
+        (23.9, ["not met", "met"]),
+        (3.0, ["not met", "met"]),
+        (2.9, ["not met", "not met"]),
+    ],
 )
 def test_duration(tmp_path: Path, hours: float, expected: list[str]) -> None:
     # EN 13187 annex D 24 h (from memory); 3 h on a public page on surveys.
@@ -219,6 +257,7 @@ def test_distance_against_target_size(tmp_path: Path) -> None:
     # 1.3 mrad at 10 m is 13 mm; 3 x 3 footprints are common practice.
     (large,) = found(survey, name, finding(3, 40))
     assert (large.state, "13 mm" in large.value) == ("met", True)
+    assert "smallest finding 3 footprints across" in large.value
     assert found(survey, name, finding(3, 40), finding(30, 2))[0].state == "not met"
     # The smallest finding that is looked for: 9 pixels are 3 across.
     assert found(survey, name)[0].state == "met"

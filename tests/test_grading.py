@@ -4,6 +4,7 @@ Expected numbers that name no other source are arithmetic shown beside them.
 """
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -237,6 +238,54 @@ def test_draws_without_a_solution_are_left_out() -> None:
         measured({"like_difference": Estimate(5.0, {}, draws)}), ["neta-like-components"]
     )
     assert grading.chances["plan"] == pytest.approx(1.0)
+
+
+@pytest.mark.parametrize("lost", [0.51, 1.0])
+def test_a_quantity_without_a_known_uncertainty_is_not_graded(lost: float) -> None:
+    # Neither "act" by the value nor "no deficiency" by the few draws that are left.
+    draws = np.full(DRAWS, 0.5)
+    draws[: int(lost * DRAWS)] = np.nan
+    region = measured({"like_difference": Estimate(30.0, {"a": 1.0}, draws)})
+    found, (grading,) = graded(region, ["neta-like-components"])
+    assert found.grade is None
+    assert grading.grade is None
+    assert grading.missing == ("a known uncertainty",)
+    assert grading.chances == {}
+    assert grading.value is None
+
+
+def test_the_published_text_of_the_class_is_quoted() -> None:
+    for delta_k, place in ((2.0, 0), (9.0, 1), (30.0, 2)):
+        _, (grading,) = graded(
+            measured({"like_difference": exact(delta_k)}), ["neta-like-components"]
+        )
+        (criterion,) = load_criteria(["neta-like-components"])
+        assert grading.class_text == criterion.classes[place].text
+        assert grading.class_label == criterion.classes[place].label
+
+
+def test_a_scenario_is_graded_by_what_it_has_and_never_heads_the_finding() -> None:
+    names = ["neta-like-components", "neta-rise-over-air"]
+    region = replace(
+        measured({"like_difference": exact(2.0), "rise_over_air": exact(5.0)}),
+        scenarios={"full load": {"like_difference": exact(30.0)}},
+    )
+    found, gradings = graded(region, names)
+    assert [(each.scenario, each.criterion, each.grade) for each in gradings] == [
+        ("", "neta-like-components", "watch"),
+        ("", "neta-rise-over-air", "watch"),
+        ("full load", "neta-like-components", "act"),
+    ]
+    assert found.grade == "watch"
+
+
+def test_a_dew_point_beyond_the_formula_is_named() -> None:
+    # 0.02 % at 0 degC is a vapour pressure of 0.12 Pa; over ice that of -60 degC is 1.08 Pa
+    # (ASHRAE Handbook Fundamentals 2017, ch. 1, table 3; from memory).
+    region = of_site(exact(-5.0), given("indoor_c", 0.0), given("humidity", 2e-4))
+    _, (grading,) = graded(region, ["dew-point"])
+    assert grading.grade is None
+    assert any("below -60 degC" in each for each in grading.missing)
 
 
 @pytest.mark.parametrize(

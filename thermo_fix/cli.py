@@ -97,6 +97,13 @@ def run(
     no_pictures: Annotated[
         bool, typer.Option("--no-pictures", help="Leave the pictures out of the report.")
     ] = False,
+    images_per_page: Annotated[
+        int,
+        typer.Option(min=1, help="Images up to which the report is one file."),
+    ] = 60,
+    single_file: Annotated[
+        bool, typer.Option("--single-file", help="One file, however many images there are.")
+    ] = False,
     pdf: Annotated[
         bool, typer.Option("--pdf", help="Print the report to report.pdf with Chromium.")
     ] = False,
@@ -121,6 +128,8 @@ def run(
         fresh=fresh,
         planes=not no_planes,
         pictures=not no_pictures,
+        images_per_page=images_per_page,
+        single_file=single_file,
         debug=_Settings.debug,
     )
     if paper not in (None, "A4", "letter"):

@@ -260,7 +260,8 @@ def _criterion(table: Any, file: str, number: int) -> Criterion:
     quantity = table.get("quantity")
     if quantity not in get_args(QuantityName):
         raise SheetError(
-            f"{where}: quantity = {_quoted(quantity)} is not one of {', '.join(get_args(QuantityName))}"
+            f"{where}: quantity = {_quoted(quantity)} is not one of "
+            f"{', '.join(get_args(QuantityName))}"
         )
     senses = table.get("senses")
     if (

@@ -85,6 +85,10 @@ class RunOptions:
     """Write corrected and uncertainty planes."""
     pictures: bool = True
     """Put pictures into the report."""
+    images_per_page: int = 60
+    """Images up to which the report is one file; beyond, each image has a page of its own."""
+    single_file: bool = False
+    """One file whatever the number of images."""
     debug: bool = False
     """Show on standard error where in the program an image failed, and stop at a fault of it."""
 
@@ -228,6 +232,8 @@ def _run(
             sheet_text=None if sheet is None else sheet.decode("utf-8-sig"),
             run_time=run_time,
             criteria=[criterion_text(each) for each in criteria],
+            images_per_page=options.images_per_page,
+            single_file=options.single_file,
         )
         _collect(outcomes, workshop.folder, staging.folder, options)
         staging.finish()

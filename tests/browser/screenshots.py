@@ -20,7 +20,7 @@ from thermo_fix.report.pdf import find_browser
 from thermo_fix.survey import run_survey
 
 FOLDER = Path(__file__).parents[2] / "docs" / "screenshots"
-MOST_BYTES = 400_000
+MOST_BYTES = 200_000
 """Of one picture."""
 VIEWS = (("360", 360, 780), ("1280", 1280, 1000), ("print", 688, 992))
 """Name, width and height: a telephone, a laptop, the printable part of an A4 sheet."""

@@ -186,14 +186,21 @@ def _stands_out(
 
 def _ring(mask: MaskArray, inside: MaskArray) -> tuple[tuple[int, int], ...]:
     """Return the pixels (x, y) of the same zone in a ring around a region."""
+    occupied = [np.flatnonzero(mask.any(axis=axis)) for axis in (1, 0)]
+    rows = columns = np.empty(0, np.intp)
+    top = left = 0
     for width in (_RING_WIDTH_PX, 4 * _RING_WIDTH_PX, max(mask.shape)):
-        inner = cv2.dilate(mask.astype(np.uint8), np.ones((2 * _RING_GAP_PX + 1,) * 2, np.uint8))
-        reach = 2 * (_RING_GAP_PX + width) + 1
-        outer = cv2.dilate(mask.astype(np.uint8), np.ones((reach, reach), np.uint8))
-        rows, columns = np.nonzero((outer > 0) & (inner == 0) & inside)
+        # Only as much of the image as the ring can reach.
+        margin = _RING_GAP_PX + width
+        top, left = (max(0, int(each[0]) - margin) for each in occupied)
+        bottom, right = (int(each[-1]) + 1 + margin for each in occupied)
+        part = mask[top:bottom, left:right].astype(np.uint8)
+        inner = cv2.dilate(part, np.ones((2 * _RING_GAP_PX + 1,) * 2, np.uint8))
+        outer = cv2.dilate(part, np.ones((2 * margin + 1,) * 2, np.uint8))
+        rows, columns = np.nonzero((outer > 0) & (inner == 0) & inside[top:bottom, left:right])
         if len(rows) >= 25:
             break
-    return tuple(zip(columns.tolist(), rows.tolist(), strict=True))
+    return tuple(zip((columns + left).tolist(), (rows + top).tolist(), strict=True))
 
 
 # ---------------------------------------------------------------- like zones

@@ -174,10 +174,8 @@ def _grading(
 def _chances(
     criterion: Criterion, draws: NDArray[np.float64], settings: Mapping[str, float]
 ) -> dict[str, float]:
-    """Probability of each grade; draws without a solution are left out."""
+    """Probability of each grade; draws without a solution, fewer than half, are left out."""
     finite = draws[np.isfinite(draws)]
-    if len(finite) == 0:
-        return {NO_GRADE: 1.0}
     classes = criterion.classify(finite, settings)
     shares = np.bincount(classes + 1, minlength=len(criterion.classes) + 1) / len(finite)
     chances: dict[str, float] = {NO_GRADE: float(shares[0])}
