@@ -19,12 +19,6 @@ def test_results_come_in_the_order_of_the_tasks() -> None:
 
 
 def test_tasks_are_taken_only_as_they_are_needed() -> None:
-    taken: list[int] = []
-
-    def tasks() -> "list[int]":
-        return [taken.append(number) or number for number in range(1)]
-
-    assert list(map_over_pool(squared, tasks(), 1, lost)) == [(0, 0)]
     source = iter(range(1000))
     results = map_over_pool(squared, source, 2, lost)
     next(results)

@@ -98,7 +98,7 @@ def test_agrees_with_slow_and_foreign_code(polygon: tuple[Point, ...]) -> None:
     np.testing.assert_array_equal(mask, inside.reshape(SHAPE))
     # scikit-image counts (row, column) from pixel centres.
     shifted = np.array([(y - 0.5, x - 0.5) for x, y in polygon])
-    np.testing.assert_array_equal(mask, polygon2mask(SHAPE, shifted))  # type: ignore[no-untyped-call]
+    np.testing.assert_array_equal(mask, polygon2mask(SHAPE, shifted))
 
 
 quarters = st.integers(-20, 140).map(lambda number: number / 4)

@@ -187,7 +187,7 @@ def _outline(height: NDArray[np.float32], part: MaskArray) -> NDArray[np.float32
     """Return the outer contour at half height between the pixels, as (x, y) in float32."""
     # Nothing but this part, and closed where the image ends.
     alone = np.where(_grown(part, 1), height, 0.0)
-    lines = find_contours(np.pad(alone, 1), _OUTLINE)  # type: ignore[no-untyped-call]
+    lines = find_contours(np.pad(alone, 1), _OUTLINE)
     if not lines:
         return None
     longest = max(lines, key=len)
