@@ -82,7 +82,7 @@ def killed_at(folder: Path, step: int) -> Callable[[], object]:
 def kills(template: Path, work: Path, *, swap: bool, stride: int) -> dict[str, Any]:
     """Kill a run at every ``stride``-th change on the disk and look at what is there."""
     if not swap:
-        staging.swap = lambda first, second: False
+        vars(staging)["swap"] = lambda first, second: False
     folder = work / "survey"
     outcome: dict[str, Any] = {"kills": 0, "old": 0, "new": 0, "aside": 0, "wrong": []}
     shutil.copytree(template, folder)

@@ -164,6 +164,33 @@ def test_workers_end_with_the_run_that_started_them(tmp_path: Path, kills: int) 
     assert [path.name for path in folder.iterdir() if path.name.startswith(".")] == []
 
 
+def test_ctrl_c_is_one_line_and_the_run_is_carried_on(tmp_path: Path) -> None:
+    folder = write_folder(tmp_path, *(f"{number}.tif" for number in range(8)))
+    process = subprocess.Popen(
+        [sys.executable, "-m", "thermo_fix", "run", str(folder), "--jobs", "2"],
+        stdout=subprocess.PIPE,
+        stderr=subprocess.PIPE,
+        env={**os.environ, "PYTHONPATH": str(ROOT)},
+        start_new_session=True,
+    )
+    work = folder / ".results.work"
+    until = time.monotonic() + 60
+    while not list(work.glob("*.zip")) and process.poll() is None:
+        assert time.monotonic() < until
+        time.sleep(0.01)
+    os.killpg(process.pid, signal.SIGINT)  # as a terminal does: to all of its processes
+    out, err = process.communicate(timeout=60)
+    assert out == b""
+    assert process.returncode == 2
+    assert err.decode() == (
+        "thermo-fix: stopped; finished images are kept, and the same command carries on\n"
+    )
+    assert not (folder / "results").exists()
+    assert list(work.glob("*.zip"))
+    run_survey(folder, options=RunOptions(jobs=1))
+    assert [path.name for path in folder.iterdir() if path.name.startswith(".")] == []
+
+
 # ---- what dead runs leave ----------------------------------------------------------------------
 
 
@@ -234,7 +261,7 @@ def test_everything_is_flushed_before_it_is_moved(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     done: list[str] = []
-    fsync, exchange = os.fsync, staging_module.swap
+    fsync, exchange = os.fsync, moving_module.swap
 
     def flushed(descriptor: int) -> None:
         done.append(Path(f"/proc/self/fd/{descriptor}").readlink().name)

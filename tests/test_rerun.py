@@ -96,7 +96,7 @@ def test_a_changed_file_is_computed_again(survey: Path, computed: list[str]) -> 
     assert computed == ["IR_0003.tif"]
 
 
-@pytest.mark.parametrize("damage", ["plane", "kept", "gone"])
+@pytest.mark.parametrize("damage", ["plane", "kept", "gone", "one bit"])
 def test_what_was_kept_and_got_damaged_is_computed_again(
     survey: Path, computed: list[str], damage: str
 ) -> None:
@@ -110,6 +110,10 @@ def test_what_was_kept_and_got_damaged_is_computed_again(
         path = sorted((survey / "results/.kept").iterdir())[0]
         if damage == "kept":
             path.write_bytes(b"PK not a ZIP file")
+        elif damage == "one bit":
+            content = bytearray(path.read_bytes())
+            content[len(content) // 2] ^= 1
+            path.write_bytes(content)
         else:
             path.unlink()
     run_survey(survey, options=ONE)

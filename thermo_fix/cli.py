@@ -16,6 +16,7 @@ import typer
 from thermo_fix.errors import SheetError, ThermoFixError, one_line, reason_of
 from thermo_fix.solve_cli import solve
 from thermo_fix.terminal import problem, say, several_lines, trace
+from thermo_fix.text_file import write_text_file
 from thermo_fix.version import __version__
 
 if TYPE_CHECKING:
@@ -29,6 +30,9 @@ if TYPE_CHECKING:
 EXIT_DONE = 0
 EXIT_SOME_FAILED = 1
 EXIT_NOT_RUN = 2
+
+_INTERRUPTED = 130
+"""What the library of the command line makes of Ctrl-C: 128 + SIGINT, as shells do."""
 
 app = typer.Typer(
     name="thermo-fix",
@@ -157,11 +161,9 @@ def draft(
         _fail(f"{folder}: holds no TIFF image (*.tif, *.tiff); nothing to draft a sheet for")
     text = draft_sheet(folder, facts)
     try:
-        partial = sheet.with_name(f".{SHEET_NAME}.partial")
-        partial.write_text(text, encoding="utf-8", newline="\n")
-        partial.replace(sheet)
+        write_text_file(sheet, text)
     except OSError as error:
-        _fail(f"{sheet}: cannot be written ({(error.strerror or 'error').lower()})")
+        _fail(f"{sheet}: cannot be written ({reason_of(error)})")
     say(f"{sheet}: drafted for {len(facts)} images. Fill in what is marked, then:")
     say(f"  thermo-fix vet {_quoted(folder)}")
 
@@ -313,6 +315,8 @@ def main() -> NoReturn:
     try:
         code = app(standalone_mode=False)
         sys.stdout.flush()
+        if code == _INTERRUPTED:
+            raise KeyboardInterrupt
         sys.exit(code if isinstance(code, int) else EXIT_DONE)
     except typer.Exit as leave:
         sys.exit(leave.exit_code)

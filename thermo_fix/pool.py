@@ -83,7 +83,7 @@ def map_over_pool(
                 if task is None:
                     break
                 try:
-                    flying.append((task, pool.submit(function, task)))
+                    flying.append((task, _submit(pool, function, task)))
                 except BrokenExecutor:
                     # A worker died between two tasks of ours. Who killed it is found among those
                     # in flight; with none there, it was no task.
@@ -140,7 +140,7 @@ def map_over_executor(
 def _alone(function: Callable[[Task], Done], task: Task, lost: Callable[[Task], Done]) -> Done:
     pool = _new_pool(1)
     try:
-        return pool.submit(function, task).result()
+        return _submit(pool, function, task).result()
     except BrokenExecutor:
         return lost(task)
     finally:
@@ -154,8 +154,21 @@ def _new_pool(jobs: int) -> ProcessPoolExecutor:
     )
 
 
+def _submit(pool: Executor, function: Callable[[Task], Done], task: Task) -> "Future[Done]":
+    """Submit a task; workers that start meanwhile inherit that Ctrl-C does not reach them.
+
+    It goes to every process of the terminal, and the parent alone decides what it means.
+    """
+    if not hasattr(signal, "pthread_sigmask"):  # not on every system
+        return pool.submit(function, task)
+    before = signal.pthread_sigmask(signal.SIG_BLOCK, {signal.SIGINT})
+    try:
+        return pool.submit(function, task)
+    finally:
+        signal.pthread_sigmask(signal.SIG_SETMASK, before)
+
+
 def _start_worker() -> None:
-    # Ctrl-C reaches every process of the terminal; the parent alone decides what it means.
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     parent = multiprocessing.parent_process()
     if parent is not None:

@@ -1,7 +1,10 @@
-"""Text files of a survey, from anywhere: read whole, up to a size, as UTF-8."""
+"""Text files of a survey: read whole, up to a size, as UTF-8; written whole or not at all."""
 
+import contextlib
 import os
+import shutil
 import stat
+import tempfile
 from pathlib import Path
 
 from thermo_fix.errors import SheetError, one_line, reason_of
@@ -57,3 +60,42 @@ def read_text_file(path: Path, most_bytes: int, what: str, advice: str) -> str:
             f"{name}, line {line}: the byte 0x{data[error.start]:02X} is not UTF-8 text; "
             "save the file as UTF-8"
         ) from error
+
+
+def write_text_file(path: Path, text: str, *, mark: bytes = b"") -> None:
+    """Write a text as UTF-8; the file is the old one until the new one is on the disk.
+
+    Parameters
+    ----------
+    path
+        The file; its permissions are kept.
+    text
+        Written as it is, without translating line ends.
+    mark
+        Bytes to stand before it.
+
+    Raises
+    ------
+    OSError
+        It cannot be written; an older file is then as it was.
+
+    """
+    # A new name that nobody can have laid a link under.
+    handle, name = tempfile.mkstemp(".partial", f".{path.name}.", path.parent)
+    partial = Path(name)
+    try:
+        with os.fdopen(handle, "wb") as stream:
+            stream.write(mark + text.encode("utf-8"))
+            stream.flush()
+            os.fsync(stream.fileno())
+        if path.exists():
+            shutil.copymode(path, partial)
+        else:
+            mask = os.umask(0)
+            os.umask(mask)
+            partial.chmod(0o666 & ~mask)
+        partial.replace(path)
+    except OSError:
+        with contextlib.suppress(OSError):
+            partial.unlink()
+        raise

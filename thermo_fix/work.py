@@ -44,7 +44,7 @@ from thermo_fix.records import (
     Survey,
 )
 from thermo_fix.report import encode_photo, encode_pictures
-from thermo_fix.report.archive import pictures_to_files
+from thermo_fix.report.archive import pictures_from_files, pictures_to_files
 from thermo_fix.results import write_plane
 from thermo_fix.results.kept import KeptImage, canonical, keep_image, key_of, load_kept
 from thermo_fix.sheet import check_polygon, label_zones, overlap_notes
@@ -240,14 +240,14 @@ def _write_planes(task: ImageTask, key: str, corrected: CorrectedFrame, planes: 
 
 def _taken_over(task: ImageTask, key: str) -> KeptImage | None:
     """Return finished work of this key, from an interrupted run or an earlier result."""
-    kept = load_kept(task.work, key, [_PLANES_INDEX] if task.planes else [])
+    kept = _whole(task.work, key, task)
     if kept is not None and _planes_are_whole(
         kept, {name: plane_path(task.work, key, name) for name in PLANE_NAMES}, task
     ):
         return kept
     if task.older is None:
         return None
-    kept = load_kept(task.older / ".kept", key, [_PLANES_INDEX] if task.planes else [])
+    kept = _whole(task.older / ".kept", key, task)
     if kept is None:
         return None
     old = {name: task.older / name / task.plane_name for name in PLANE_NAMES}
@@ -257,6 +257,21 @@ def _taken_over(task: ImageTask, key: str) -> KeptImage | None:
         for name in PLANE_NAMES:
             _link(old[name], plane_path(task.work, key, name))
     _link(task.older / ".kept" / f"{key}.zip", task.work / f"{key}.zip")
+    return kept
+
+
+def _whole(folder: Path, key: str, task: ImageTask) -> KeptImage | None:
+    """Return kept work, every byte of it read and compared with its checksum, or None.
+
+    A picture that is damaged would be missed only in the report.
+    """
+    kept = load_kept(folder, key)
+    if kept is None or not task.pictures:
+        return kept
+    try:
+        pictures_from_files(kept.files)
+    except (KeyError, TypeError, ValueError):
+        return None
     return kept
 
 

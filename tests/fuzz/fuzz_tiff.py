@@ -9,6 +9,7 @@ import os
 import sys
 import tempfile
 from pathlib import Path
+from typing import Any
 
 import atheris
 
@@ -49,19 +50,18 @@ def seeds(folder: Path) -> None:
         if len(content) < 2000:
             (folder / f"bad {number}").write_bytes(content)
     plane = np.linspace(10, 30, 12 * 9, dtype=np.float32).reshape(12, 9)
-    for number, options in enumerate(
-        [
-            {"compression": "zlib", "predictor": True},
-            {"compression": "lzw"},
-            {"compression": "zstd"},
-            {"compression": "packbits"},
-            {"tile": (16, 16), "compression": "zlib"},
-            {"bigtiff": True},
-            {"byteorder": ">"},
-            {"rowsperstrip": 3, "datetime": "2026:01:14 07:12:00"},
-        ]
-    ):
-        tifffile.imwrite(folder / f"good {number}", plane, photometric="minisblack", **options)
+    options: list[dict[str, Any]] = [
+        {"compression": "zlib", "predictor": True},
+        {"compression": "lzw"},
+        {"compression": "zstd"},
+        {"compression": "packbits"},
+        {"tile": (16, 16), "compression": "zlib"},
+        {"bigtiff": True},
+        {"byteorder": ">"},
+        {"rowsperstrip": 3, "datetime": "2026:01:14 07:12:00"},
+    ]
+    for number, each in enumerate(options):
+        tifffile.imwrite(folder / f"good {number}", plane, photometric="minisblack", **each)
 
 
 def main() -> None:

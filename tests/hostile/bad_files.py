@@ -194,12 +194,15 @@ BAD_FILES: dict[str, tuple[bytes, str]] = {
     "short deflate": (packed(8, zlib.compress(PLAIN[:-400])), "cannot be decoded"),
     "long deflate": (packed(8, zlib.compress(PLAIN * 2)), "cannot be decoded"),
     "deflate bomb": (packed(8, zlib.compress(b"\0" * 2**24, 9)), "cannot be decoded"),
-    "short LZW": (packed(5, imagecodecs.lzw_encode(PLAIN[:-400])), "cannot be decoded"),
+    "short LZW": (packed(5, bytes(imagecodecs.lzw_encode(PLAIN[:-400]))), "cannot be decoded"),
     "wrong LZW": (packed(5, b"\x12\x34" * 200), "cannot be decoded"),
     "short PackBits": (packed(32773, b"\xff" * 20), "cannot be decoded"),
-    "cut Zstandard": (packed(50000, imagecodecs.zstd_encode(PLAIN)[:-50]), "cannot be decoded"),
+    "cut Zstandard": (
+        packed(50000, bytes(imagecodecs.zstd_encode(PLAIN))[:-50]),
+        "cannot be decoded",
+    ),
     "Zstandard of another size": (
-        packed(50000, imagecodecs.zstd_encode(PLAIN * 2)),
+        packed(50000, bytes(imagecodecs.zstd_encode(PLAIN * 2))),
         "cannot be decoded",
     ),
     "unknown compression": (packed(65000, PLAIN), "compression (code 65000) is not supported"),

@@ -5,7 +5,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 import tifffile
-from hypothesis import HealthCheck, given, settings
+from hypothesis import HealthCheck, Phase, given, settings
 from hypothesis import strategies as st
 from hypothesis.extra.numpy import array_shapes, arrays
 
@@ -119,6 +119,7 @@ EDGES = st.one_of(
 
 @settings(
     max_examples=25,
+    phases=(Phase.explicit, Phase.reuse, Phase.generate),
     deadline=None,
     suppress_health_check=[HealthCheck.function_scoped_fixture, HealthCheck.too_slow],
 )

@@ -367,6 +367,20 @@ def test_a_work_folder_that_is_a_link_is_not_followed(tmp_path: Path) -> None:
     assert not (folder / ".results.work").is_symlink()
 
 
+def test_a_sheet_is_not_written_through_a_link(thermo_fix: Command, tmp_path: Path) -> None:
+    folder = write_folder(tmp_path / "survey", "a.tif", sheet=None)
+    (tmp_path / "secret").write_text("secret")
+    for name in (".survey.toml.partial", "survey.toml"):
+        (folder / name).unlink(missing_ok=True)
+        (folder / name).symlink_to(tmp_path / "secret")
+        assert thermo_fix("draft", folder, "--force").status == 0
+    assert (tmp_path / "secret").read_text() == "secret"
+    assert not (folder / "survey.toml").is_symlink()
+    other = tmp_path / "other"
+    other.touch()
+    assert (folder / "survey.toml").stat().st_mode == other.stat().st_mode
+
+
 @pytest.mark.parametrize("kind", ["link", "pipe", "folder"])
 def test_a_lock_that_is_no_file_is_not_followed(tmp_path: Path, kind: str) -> None:
     folder = write_folder(tmp_path / "survey", "a.tif")

@@ -44,7 +44,7 @@ def _no_network(event: str, arguments: tuple[Any, ...]) -> None:
 
 scandir, listdir = os.scandir, os.listdir
 if os.environ.get("TEST_REVERSED"):
-    os.scandir = _Reversed  # type: ignore[assignment,misc]
+    os.scandir = _Reversed  # type: ignore[assignment]
     os.listdir = lambda *path: sorted(listdir(*path), reverse=True)  # type: ignore[assignment]
 if os.environ.get("TEST_NO_NETWORK"):
     sys.addaudithook(_no_network)

@@ -24,6 +24,10 @@ KELVIN_MEDIANS_K: Final = (200.0, 623.15)
 """K, that is -73 to 350 degC. Median of a float image that is taken as kelvins. A median of 200 to
 250 lies in both ranges and stays unclear."""
 
+HOTTEST_K: Final = 3000.0 + ZERO_CELSIUS_K
+"""K. Above it no reading is taken for one, as no temperature in the sheet is: no camera reaches it,
+and damaged values do. Common practice, no source."""
+
 COUNT_SPREAD_C: Final = (-60.0, 350.0)
 """degC. Range in which a linear encoding must put the 5th and the 95th percentile. All bounds are
 common practice without a source."""
@@ -219,18 +223,21 @@ def _from_counts(finite: NDArray[Any], *, signed: bool) -> Encoding:
 def _check_possible(finite: NDArray[Any], encoding: Encoding) -> list[str]:
     """Notes on implausible values; refuse an encoding that is impossible throughout."""
     kelvin = _kelvin(finite, encoding)
-    impossible = int(np.count_nonzero(~(kelvin > 0.0)))
-    if impossible == kelvin.size:
+    low = int(np.count_nonzero(~(kelvin > 0.0)))
+    high = int(np.count_nonzero(kelvin > HOTTEST_K))
+    hottest = f"above {HOTTEST_K - ZERO_CELSIUS_K:.0f} degC"
+    if low + high == kelvin.size:
+        where = "at or below absolute zero" if low else hottest
+        where = f"{where} or {hottest}" if low and high else where
         raise UnclearEncoding(
-            f"read as {_words(encoding)}, every pixel lies at or below absolute zero; "
+            f"read as {_words(encoding)}, every pixel lies {where}; "
             f"correct camera.pixel, camera.scale and camera.offset {IN_THE_SHEET}"
         )
-    notes = []
-    if impossible:
-        notes.append(
-            f"{counted(impossible, 'pixel')} at or below absolute zero "
-            f"{'is' if impossible == 1 else 'are'} left out."
-        )
+    notes = [
+        f"{counted(number, 'pixel')} {where} {'is' if number == 1 else 'are'} left out."
+        for number, where in ((low, "at or below absolute zero"), (high, hottest))
+        if number
+    ]
     median_c = float(np.median(kelvin)) - ZERO_CELSIUS_K
     if not CELSIUS_MEDIANS_C[0] <= median_c <= CELSIUS_MEDIANS_C[1]:
         notes.append(
@@ -243,11 +250,12 @@ def _check_possible(finite: NDArray[Any], encoding: Encoding) -> list[str]:
 def reading_k(frame: Frame) -> NDArray[np.float32]:
     """Return the readings of a frame in kelvins, (rows, columns), float32.
 
-    NaN where the file holds no finite value and where a value lies at or below absolute zero.
+    NaN where the file holds no finite value and where a value lies at or below absolute zero or
+    above ``HOTTEST_K``.
     """
     with np.errstate(all="ignore"):
         kelvin: NDArray[np.float32] = _kelvin(frame.values, frame.encoding).astype(np.float32)
-        kelvin[~(np.isfinite(kelvin) & (kelvin > 0.0))] = np.nan
+        kelvin[~((kelvin > 0.0) & (kelvin <= HOTTEST_K))] = np.nan
     return kelvin
 
 

@@ -101,10 +101,12 @@ def exif_date(page: TiffPage, content: bytes) -> str | None:
         return None
     tiff = page.parent.tiff
     start = tag.valueoffset
+    # Code and type, then count and value, in the byte order that both begin with.
+    entry_format = tiff.tagformat1 + tiff.tagformat2[1:]
     entries = struct.unpack_from(tiff.tagnoformat, content, start)[0]
     for index in range(min(int(entries), _MOST_EXIF_TAGS)):
         place = start + tiff.tagnosize + index * tiff.tagsize
-        code, kind, count, inline = struct.unpack_from(tiff.tagheaderformat, content, place)
+        code, kind, count, inline = struct.unpack_from(entry_format, content, place)
         if code != DATE_TIME_ORIGINAL or kind != ASCII or count > _LONGEST_DATE:
             continue
         if count <= tiff.tagoffsetthreshold:

@@ -2,7 +2,6 @@
 
 import codecs
 import copy
-import shutil
 import tomllib
 from collections.abc import Mapping
 from pathlib import Path
@@ -10,10 +9,11 @@ from typing import Any
 
 import tomlkit
 
-from thermo_fix.errors import FolderError, SheetError
+from thermo_fix.errors import FolderError, SheetError, reason_of
 from thermo_fix.sheet import files, toml_text
 from thermo_fix.sheet.lines import KeyPath, line_numbers
 from thermo_fix.sheet.schema import SHEET_NAME
+from thermo_fix.text_file import write_text_file
 
 _NEW = "new"
 
@@ -164,15 +164,10 @@ def _means(text: str, wanted: Mapping[str, Any]) -> bool:
 
 def _write(path: Path, text: str) -> None:
     path = path.resolve()
-    partial = path.with_name(f".{SHEET_NAME}.partial")
     try:
         mark = codecs.BOM_UTF8 if path.read_bytes().startswith(codecs.BOM_UTF8) else b""
-        partial.write_bytes(mark + text.encode("utf-8"))
-        shutil.copymode(path, partial)
-        partial.replace(path)
+        write_text_file(path, text, mark=mark)
     except OSError as error:
-        partial.unlink(missing_ok=True)
         raise FolderError(
-            f"{path}: cannot be written ({(error.strerror or 'error').lower()}); "
-            "check its permissions"
+            f"{path}: cannot be written ({reason_of(error)}); check its permissions"
         ) from error
